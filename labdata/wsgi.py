@@ -1,0 +1,8 @@
+"""The WSGI application for any web server."""
+
+import os
+
+from django.core.wsgi import get_wsgi_application
+
+os.environ.setdefault("DJANGO_SETTINGS_MODULE", "labdata.settings")
+application = get_wsgi_application()

@@ -1,0 +1,34 @@
+"""What all tests share."""
+
+from typing import Any
+
+import pytest
+from django.db import connections
+from django.test import TransactionTestCase
+
+from labdata import triggers
+
+_empty_tables = TransactionTestCase._fixture_teardown
+
+
+def _empty_guarded_tables(case: TransactionTestCase) -> None:
+    """Append-only tables refuse the emptying between cases; the triggers come back with post_migrate."""
+    for connection in connections.all(initialized_only=True):
+        triggers.remove(connection)
+    _empty_tables(case)
+
+
+TransactionTestCase._fixture_teardown = _empty_guarded_tables  # type: ignore[method-assign]
+
+
+@pytest.fixture(autouse=True)
+def _own_file_store(settings: Any, tmp_path: Any) -> None:
+    """Files of a test go to its own folder."""
+    settings.MEDIA_ROOT = tmp_path / "files"
+    settings.STORAGES = {
+        **settings.STORAGES,
+        "default": {
+            "BACKEND": "django.core.files.storage.FileSystemStorage",
+            "OPTIONS": {"location": str(tmp_path / "files")},
+        },
+    }
