@@ -4,6 +4,7 @@ from labdata.models.analyses import Analysis, AnalysisRole, Result
 from labdata.models.audit import AuditEntry
 from labdata.models.base import Qualifier
 from labdata.models.jobs import Job, JobEvent, JobState, SweeperBeat
+from labdata.models.logins import LoginFailure
 from labdata.models.methods import AnalysisRequest, Analyte, Method, ReferenceMaterial
 from labdata.models.projects import ApiToken, IdempotencyRecord, Membership, Project, Role, TokenScope
 from labdata.models.releases import Release
@@ -25,7 +26,7 @@ from labdata.models.wells import (
 __all__ = [
     "Analysis", "AnalysisRequest", "AnalysisRole", "Analyte", "ApiToken", "AuditEntry", "CasingShoe", "Consignment",
     "CoreRun", "CustodyEvent", "DatumKind", "DepthKind", "FormationTop", "IdempotencyRecord", "Job", "JobEvent",
-    "JobState", "Laboratory", "Membership", "Method", "MudInterval", "MudKind", "Project", "Qualifier",
+    "JobState", "Laboratory", "LoginFailure", "Membership", "Method", "MudInterval", "MudKind", "Project", "Qualifier",
     "ReferenceMaterial", "Release", "Report", "Result", "Role", "Sample", "SampleKind", "SourceColumn", "SourceFile",
     "SourceTable", "SurveyStation", "SweeperBeat", "TokenScope", "Upload", "Well", "WellAlias", "WellIdentifier",
 ]  # fmt: skip

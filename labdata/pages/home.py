@@ -1,0 +1,8 @@
+"""The start: every project of the user, and what waits there for them."""
+
+from django.http import HttpRequest, HttpResponse
+from django.shortcuts import render
+
+
+def home(request: HttpRequest) -> HttpResponse:
+    return render(request, "home.html")

@@ -1,0 +1,45 @@
+"""Opening a project."""
+
+from django.contrib.auth.models import User
+from django.db import transaction
+from django.utils.text import slugify
+
+from labdata import audit
+from labdata.access import Action, AnyUser, actions, visible_projects
+from labdata.errors import Conflict, InvalidInput, NotAllowed
+from labdata.models import Membership, Project, Role
+
+
+def may_open_project(user: AnyUser) -> bool:
+    """Staff, and whoever administers a project already."""
+    if not user.is_authenticated or not user.is_active:
+        return False
+    if getattr(user, "is_staff", False):
+        return True
+    return any(Action.ADMINISTER in actions(user, project) for project in visible_projects(user))
+
+
+def open_project(*, user: User, name: str, slug: str = "", description: str = "") -> Project:
+    """A new project with ``user`` as its administrator. Raises NotAllowed, InvalidInput, Conflict."""
+    if not may_open_project(user):
+        raise NotAllowed(
+            f"{user} may not open a project.", remedy="Staff and administrators of an existing project may."
+        )
+    slug = slug or slugify(name)[:60]
+    if not slug or slug != slugify(slug):
+        raise InvalidInput(
+            f"«{slug}» is no short name for addresses.", remedy="Use small letters, digits and hyphens.", field="slug"
+        )
+    with transaction.atomic():
+        if Project.objects.filter(slug=slug).exists():
+            raise Conflict(f"The short name «{slug}» is taken.", remedy="Choose another one.", field="slug")
+        project = Project.objects.create(slug=slug, name=name.strip(), description=description.strip())
+        Membership.objects.create(project=project, user=user, role=Role.ADMINISTRATOR)
+        audit.record(
+            "project.opened",
+            project,
+            actor=user,
+            project=project,
+            after={"slug": slug, "name": project.name, "administrator": user.username},
+        )
+    return project
