@@ -172,20 +172,18 @@ SPECTACULAR_SETTINGS = {
     "SERVE_PERMISSIONS": ["rest_framework.permissions.AllowAny"],
 }
 
-# Celery carries job ids; the database owns the jobs (labdata/jobs).
+# Celery carries job ids; the database owns the jobs (labdata/jobs). The broker is named in labdata/celery.py.
 CELERY_TASK_IGNORE_RESULT = True
 CELERY_RESULT_BACKEND = None
 CELERY_TASK_ACKS_LATE = False
 CELERY_WORKER_PREFETCH_MULTIPLIER = 1
 CELERY_TASK_SERIALIZER = "json"
 CELERY_ACCEPT_CONTENT = ["json"]
-CELERY_TASK_DEFAULT_QUEUE = f"{ENV.installation}.jobs"
 CELERY_TASK_PUBLISH_RETRY = False
 CELERY_BROKER_CONNECTION_RETRY_ON_STARTUP = True
 CELERY_WORKER_ENABLE_REMOTE_CONTROL = False
 CELERY_WORKER_SEND_TASK_EVENTS = False
 CELERY_WORKER_HIJACK_ROOT_LOGGER = False
-CELERY_BROKER_URL = ENV.broker_url or f"sqla+sqlite:///{HOME / 'broker.sqlite3'}"
 JOB_LEASE_SECONDS = ENV.lease_seconds
 JOB_SWEEP_SECONDS = ENV.sweep_seconds
 
