@@ -67,6 +67,12 @@ class WrongPassword(NotAllowed):
     code = "wrong_password"
 
 
+class SigningLocked(WrongPassword):
+    """Too many wrong passwords were given; signing waits."""
+
+    code = "signing_locked"
+
+
 class OpenResults(Conflict):
     """Results are still undecided or held."""
 
