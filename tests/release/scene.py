@@ -1,0 +1,154 @@
+"""A small project for release and API tests, made through the models: two wells, pyrolysis and carbon."""
+
+from dataclasses import dataclass, field
+
+from django.contrib.auth.models import User
+
+from labdata.models import (
+    Analysis,
+    Analyte,
+    Method,
+    Project,
+    Report,
+    Result,
+    Role,
+    Sample,
+    SampleKind,
+    SourceColumn,
+    SourceFile,
+    SourceTable,
+    Well,
+)
+from qc.models import ReviewItem, ReviewSet, SignOff, Verdict
+from qc.review.services import Choice, decide, sign_off
+from qc.review.standing import results_of
+from tests.factories import PASSWORD, LaboratoryFactory, MembershipFactory, ProjectFactory, WellFactory
+
+ANALYTES = {
+    "TOC": ("wt%", "carbon", []), "S1": ("mg/g", "pyrolysis", []), "S2": ("mg/g", "pyrolysis", []),
+    "TMAX": ("degC", "pyrolysis", []), "HI": ("mg/g TOC", "pyrolysis", ["S2", "TOC"]),
+}  # fmt: skip
+
+
+def analyte(code: str) -> Analyte:
+    """The analyte as the catalogue has it, or made here."""
+    unit, method, inputs = ANALYTES[code]
+    owner, _ = Method.objects.get_or_create(code=method, defaults={"name": method})
+    order = list(ANALYTES).index(code)
+    made, _ = Analyte.objects.get_or_create(
+        code=code, project=None, defaults={"name": code, "unit": unit, "method": owner, "inputs": inputs, "order": order}
+    )
+    return made
+
+
+@dataclass
+class Scene:
+    """A project and its people, one a role."""
+
+    project: Project
+    people: dict[str, User]
+    sets: list[ReviewSet] = field(default_factory=list)
+    files: int = 0
+
+    def person(self, role: str) -> User:
+        return self.people[role]
+
+    def table(self, orientation: str = "rows", version: int = 1, number: str = "") -> SourceTable:
+        """A report with one table."""
+        self.files += 1
+        sha256 = f"{self.project.pk:032x}{self.files:032x}"
+        source = SourceFile.objects.create(
+            project=self.project, sha256=sha256, name=f"file {self.files}.xlsx", size=1, stored_as=f"files/{sha256}"
+        )
+        report = Report.objects.create(
+            project=self.project, source_file=source, number=number or f"R-{self.files}", version=version,
+            laboratory=LaboratoryFactory(project=self.project),
+        )  # fmt: skip
+        return SourceTable.objects.create(
+            report=report, sheet="Sheet1", cell_range="A1:Z99", kind="pyrolysis", orientation=orientation
+        )
+
+    def well(self, name: str, **more) -> tuple[Well, ReviewSet]:
+        well = WellFactory(project=self.project, name=name, name_key=name.casefold(), **more)
+        held = ReviewSet.objects.create(project=self.project, well=well, number=1)
+        self.sets.append(held)
+        return well, held
+
+    def sample(self, well: Well, top: float, label: str = "", **more) -> Sample:
+        return Sample.objects.create(
+            well=well, kind=SampleKind.CUTTINGS, label=label, match_key=f"cuttings|{label}|{top:.3f}|{top + 5:.3f}",
+            top_md_m=top, base_md_m=top + 5, top_reported=f"{top:g}", base_reported=f"{top + 5:g}",
+            depth_unit_reported="m", **more,
+        )  # fmt: skip
+
+    def analysis(
+        self, held: ReviewSet, table: SourceTable, line: int, sample: Sample, method: str, values: dict, replicate: int = 1
+    ) -> Analysis:
+        """One analysis with its results; ``values``: analyte -> number, or text with a qualifier ("<0.05")."""
+        owner, _ = Method.objects.get_or_create(code=method, defaults={"name": method})
+        made = Analysis.objects.create(
+            project=self.project, sample=sample, method=owner, report=table.report, table=table, line=line,
+            laboratory=table.report.laboratory, replicate=replicate,
+        )  # fmt: skip
+        for code, given in values.items():
+            text = str(given)
+            column, _ = SourceColumn.objects.get_or_create(
+                table=table, line=list(ANALYTES).index(code) + 4 + 10 * (method == "carbon"),
+                defaults={"header": code, "field": code, "unit_reported": ANALYTES[code][0]},
+            )  # fmt: skip
+            qualifier = text[0] if text[0] in "<>~" else ""
+            number = text.lstrip("<>~")
+            Result.objects.create(
+                analysis=made, analyte=analyte(code), column=column, qualifier=qualifier, value_reported=text,
+                value=float(number) if number else None,
+            )  # fmt: skip
+        ReviewItem.objects.create(review_set=held, analysis=made)
+        return made
+
+    def accept(self, held: ReviewSet, rejected: dict[int, str] | None = None) -> None:
+        """Accept everything in the set but ``rejected`` (result id -> reason)."""
+        turned_down = rejected or {}
+        choices = [
+            Choice(pk, Verdict.REJECTED, turned_down[pk]) if pk in turned_down else Choice(pk, Verdict.ACCEPTED)
+            for pk in results_of(held).values_list("pk", flat=True)
+        ]
+        decide(user=self.person("geochemist"), review_set=held, choices=choices)
+
+    def sign(self, held: ReviewSet) -> SignOff:
+        held.refresh_from_db()
+        return sign_off(user=self.person("approver"), review_set=held, password=PASSWORD, meaning="reviewed")
+
+    def result(self, analysis: Analysis, code: str) -> Result:
+        return analysis.results.get(analyte__code=code)
+
+
+def bare_scene() -> Scene:
+    """A project with one member a role and nothing measured."""
+    project = ProjectFactory()
+    people = {role.value: MembershipFactory(project=project, role=role).user for role in Role}
+    return Scene(project, people)
+
+
+def small_scene() -> Scene:
+    """Two wells with three samples each, undecided: S2 and HI in pyrolysis, TOC apart, one value below a limit."""
+    scene = bare_scene()
+    for name in ("Quill 1", "Quill 2"):
+        well, held = scene.well(name, uwi=f"UWI-{name[-1]}-{scene.project.pk}")
+        table = scene.table()
+        for number in range(3):
+            sample = scene.sample(well, 2000.0 + 10 * number, f"S-{number}", formation="Upper Shale" if number else "")
+            values = {"S1": "<0.05" if number == 0 else 0.5 + number, "S2": 5.0 + number, "TMAX": 431.0, "HI": 250.5}
+            scene.analysis(held, table, 5 + number, sample, "pyrolysis", values)
+            scene.analysis(held, table, 5 + number, sample, "carbon", {"TOC": 2.125})
+    return scene
+
+
+def signed_scene() -> Scene:
+    """The small scene, with S2 of the first sample of the first well rejected, both wells signed."""
+    scene = small_scene()
+    first = scene.sets[0].analyses.filter(method__code="pyrolysis").order_by("pk")[0]
+    scene.accept(scene.sets[0], {scene.result(first, "S2").pk: "contamination"})
+    scene.accept(scene.sets[1])
+    for held in scene.sets:
+        scene.sign(held)
+    return scene
