@@ -32,3 +32,9 @@ def _own_file_store(settings: Any, tmp_path: Any) -> None:
             "OPTIONS": {"location": str(tmp_path / "files")},
         },
     }
+
+
+@pytest.fixture(autouse=True)
+def _quick_passwords(settings: Any) -> None:
+    """Slow hashing protects real passwords; made-up people need none."""
+    settings.PASSWORD_HASHERS = ["django.contrib.auth.hashers.MD5PasswordHasher"]
