@@ -39,7 +39,7 @@ def table(rows: int, seed: int = 1, first_well: int = 1) -> pd.DataFrame:
             "oi": 100 * s3 / toc, "pi": s1 / (s1 + s2), "pc": carbon, "rc": toc - carbon, "minc": tic,
         }
     )  # fmt: skip
-    return made.round({name: DECIMALS.get(name, 2) for name in made.columns[made.dtypes == float]})
+    return made.round({name: DECIMALS.get(name, 2) for name in made.select_dtypes("float").columns})
 
 
 @cache
