@@ -20,7 +20,7 @@ def broker(environment: Environment) -> dict[str, Any]:
     options: dict[str, Any] = {}
     url = environment.broker_url
     if environment.embedded:
-        url, options = f"{EMBEDDED_SCHEME}://", {"path": str(environment.home / "broker.sqlite3")}
+        url, options = f"{EMBEDDED_SCHEME}://file", {"path": str(environment.home / "broker.sqlite3")}
     elif url.startswith("redis"):
         options = {"global_keyprefix": f"{environment.installation}:", "visibility_timeout": 3600}
     elif url.startswith("amqp"):

@@ -2,7 +2,10 @@
 
 from django.urls import include, path
 
+from labdata.health import healthz
+
 urlpatterns = [
+    path("healthz", healthz, name="healthz"),
     path("", include("labdata.pages.urls")),
     path("p/<slug:slug>/review/", include("qc.review.urls")),
     path("api/v1/", include("labdata.api.urls")),

@@ -4,6 +4,7 @@ import logging
 import threading
 import traceback
 from collections.abc import Callable
+from uuid import UUID
 
 from django.db import InterfaceError, OperationalError
 
@@ -11,7 +12,7 @@ from labdata.errors import KerogateError
 from labdata.jobs import kinds
 from labdata.jobs.context import JobCancelled, JobContext, JobInterrupted, LeaseLost
 from labdata.jobs.heartbeat import Heartbeat, leave_process
-from labdata.jobs.lease import Lease
+from labdata.jobs.lease import Lease, claim
 
 logger = logging.getLogger(__name__)
 DATABASE_RETRY_SECONDS = 5
@@ -21,9 +22,21 @@ class _Current:
     """What this process works on, for the thread that ends the process in good order."""
 
     def __init__(self) -> None:
-        self.lock = threading.Lock()
         self.lease: Lease | None = None
         self.context: JobContext | None = None
+        self._closing = threading.Lock()
+        self._closed = False
+
+    def claim(self, job_id: UUID) -> Lease | None:
+        """Take a job unless the process is about to end."""
+        with self._closing:
+            self.lease = None if self._closed else claim(job_id)
+            return self.lease
+
+    def close(self) -> None:
+        """Take no further job."""
+        with self._closing:
+            self._closed = True
 
 
 CURRENT = _Current()

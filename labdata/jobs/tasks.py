@@ -5,8 +5,7 @@ from uuid import UUID
 
 from celery import shared_task
 
-from labdata.jobs.lease import claim
-from labdata.jobs.runner import run
+from labdata.jobs.runner import CURRENT, run
 
 logger = logging.getLogger(__name__)
 
@@ -15,7 +14,7 @@ logger = logging.getLogger(__name__)
 def run_job(job_id: str) -> None:
     """Run the job if it still waits. An id that this database does not know is somebody else's: ignored."""
     try:
-        lease = claim(UUID(str(job_id)))
+        lease = CURRENT.claim(UUID(str(job_id)))
     except ValueError:
         logger.warning("message with «%s», which is no job id, ignored", job_id)
         return

@@ -1,0 +1,52 @@
+"""Making a home folder ready: schema, seeds, triggers, static files."""
+
+from collections.abc import Callable
+from pathlib import Path
+
+from django.core.management import call_command
+from django.db import connection, connections
+from django.db.migrations.executor import MigrationExecutor
+from django.utils import timezone
+
+from labdata import backups, triggers
+from labdata.errors import Conflict
+
+Say = Callable[[str], None]
+
+
+def prepare_home(home: Path, say: Say) -> None:
+    """Bring database and static files of ``home`` up to this version; safe to repeat.
+
+    A SQLite database with data in it is copied to ``backups/`` before its schema changes. Raises Conflict when the
+    database was made by a newer version.
+    """
+    home.mkdir(parents=True, exist_ok=True)
+    migrate(home, say)
+    call_command("collectstatic", interactive=False, verbosity=0)
+    connections.close_all()
+
+
+def migrate(home: Path, say: Say) -> None:
+    """Apply what is pending; every run re-creates the append-only triggers and the seeds."""
+    executor = MigrationExecutor(connection)
+    applied = set(executor.loader.applied_migrations)
+    _refuse_newer(applied - set(executor.loader.graph.nodes))
+    plan = executor.migration_plan(executor.loader.graph.leaf_nodes())
+    if plan and applied and connection.vendor == "sqlite":
+        copy = home / "backups" / f"before-migration-{timezone.now():%Y%m%dT%H%M%S}.sqlite3"
+        say(f"Copying the database to {copy} before its schema changes.")
+        backups.copy_sqlite(Path(connection.settings_dict["NAME"]), copy)
+    elif applied and not plan and (gone := triggers.missing(connection)):
+        say(f"The triggers {', '.join(gone)} were missing and are made again; run `manage.py audit`.")
+    if plan:
+        say(f"Preparing the database: {len(plan)} migrations.")
+    call_command("migrate", interactive=False, verbosity=0)
+
+
+def _refuse_newer(unknown: set[tuple[str, str]]) -> None:
+    ours = sorted(f"{app}.{name}" for app, name in unknown if app in {"labdata", "qc"})
+    if ours:
+        raise Conflict(
+            f"The database was made by another version of this program: it has {', '.join(ours)}.",
+            remedy="Use the version that made it, or another --home.",
+        )
