@@ -159,4 +159,6 @@ def _done(job: Job) -> None:
 
 def _records(rows: int) -> list[dict[str, float]]:
     """The workbook's rows as dictionaries for the loop."""
-    return workload.table(rows).to_dict("records")  # type: ignore[return-value] - keys are column names
+    table = workload.table(rows)
+    names = [str(name) for name in table.columns]
+    return [dict(zip(names, cells, strict=True)) for cells in table.itertuples(index=False, name=None)]

@@ -51,7 +51,7 @@ def workbook(rows: int, seed: int = 1, first_well: int = 1) -> bytes:
     page = book.add_worksheet("Results")
     page.write_row(0, 0, [f"Benchmark laboratory, report B-{seed}"])
     page.write_row(2, 0, list(HEADERS.values()))
-    position = frame.columns.get_loc("s1")
+    position = list(frame.columns).index("s1")
     for row, cells in enumerate(frame.itertuples(index=False, name=None), start=3):
         page.write_row(row, 0, cells)
         if cells[position] < LIMIT:

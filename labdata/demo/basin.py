@@ -34,7 +34,7 @@ class Formation:
     clay: float
 
 
-AMBREL = Formation("Ambrel Sandstone", "III", 0.62, 0.45, 130.0, 80.0, 0.15, 5.0, 3.0, 0.25)
+AMBREL = Formation("Ambrel Sandstone", "III", 0.62, 0.45, 130.0, 80.0, 0.04, 5.0, 3.0, 0.25)
 CORVANE = Formation("Corvane Shale", "II", 1.55, 0.70, 430.0, 32.0, 1.20, 8.0, 4.0, 0.72)
 DUNMARROW = Formation("Dunmarrow Limestone", "II/III", 0.48, 0.40, 260.0, 70.0, 0.02, 78.0, 8.0, 0.60)
 HESTWICK = Formation("Hestwick Shale", "II", 4.20, 0.42, 560.0, 15.0, 0.05, 14.0, 5.0, 0.55)

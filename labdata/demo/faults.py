@@ -77,13 +77,13 @@ def tmax_of_noise(table: pd.DataFrame) -> pd.DataFrame:
 
 def hi_slip(table: pd.DataFrame) -> pd.DataFrame:
     """Two digits of one hydrogen index changed places."""
-    table.loc[HI_ROW, "hi"] = _swapped(float(table.loc[HI_ROW, "hi"]), 0)
+    table.at[HI_ROW, "hi"] = _swapped(_number(table, HI_ROW, "hi"), 0)
     return table
 
 
 def depth_digits(table: pd.DataFrame) -> pd.DataFrame:
     """Two digits of one plug depth changed places, as a typist does it."""
-    table.loc[DEPTH_ROW, "top"] = _swapped(float(table.loc[DEPTH_ROW, "top"]), 2)
+    table.at[DEPTH_ROW, "top"] = _swapped(_number(table, DEPTH_ROW, "top"), 2)
     return table
 
 
@@ -101,17 +101,17 @@ def same_depth_twice(table: pd.DataFrame) -> pd.DataFrame:
 
 def toc_slip(table: pd.DataFrame) -> pd.DataFrame:
     """One TOC lost a digit on the way to the report; the index was computed from the slip."""
-    toc = round(float(table.loc[TOC_ROW, "toc"]) / 10, 2)
-    table.loc[TOC_ROW, "toc"] = toc
+    toc = round(_number(table, TOC_ROW, "toc") / 10, 2)
+    table.at[TOC_ROW, "toc"] = toc
     for index, peak in (("hi", "s2"), ("oi", "s3")):
-        table.loc[TOC_ROW, index] = round(100 * float(table.loc[TOC_ROW, peak]) / toc)
+        table.at[TOC_ROW, index] = round(100 * _number(table, TOC_ROW, peak) / toc)
     return table
 
 
 def negative_peak(table: pd.DataFrame) -> pd.DataFrame:
     """The blank taken off was larger than the S1 peak."""
-    table.loc[NEGATIVE_ROW, "s1"] = -0.03
-    table.loc[NEGATIVE_ROW, "pi"] = None
+    table.at[NEGATIVE_ROW, "s1"] = -0.03
+    table.at[NEGATIVE_ROW, "pi"] = None
     return table
 
 
@@ -119,6 +119,11 @@ def top_for_base(table: pd.DataFrame) -> pd.DataFrame:
     """Top and base of one interval stand in each other's column."""
     table.loc[TURNED_ROW, ["top", "base"]] = table.loc[TURNED_ROW, ["base", "top"]].to_numpy()
     return table
+
+
+def _number(table: pd.DataFrame, label: str, name: str) -> float:
+    """One reported number."""
+    return float(str(table.at[label, name]))
 
 
 def _swapped(value: float, position: int) -> float:

@@ -95,7 +95,7 @@ def carbon_sulphur(well: DemoWell, every: int, first: int = 0) -> pd.DataFrame:
     total = (truth["toc"] + inorganic) * (1 + 0.01 * stream.standard_normal(len(truth)))
     sulphur = truth["toc"] / 2.8 * (1 + 0.15 * stream.standard_normal(len(truth)))
     table = pd.DataFrame({"tc": total, "tic": inorganic, "ts": sulphur})
-    return _beside(truth, rounded(table, dict.fromkeys(table, Rounding(2, 0.05))))
+    return _beside(truth, rounded(table, dict.fromkeys(("tc", "tic", "ts"), Rounding(2, 0.05))))
 
 
 def rounded(table: pd.DataFrame, rules: dict[str, Rounding]) -> pd.DataFrame:

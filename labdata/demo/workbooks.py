@@ -73,7 +73,7 @@ def tarrow_1(revision: int = 1) -> bytes:
         revision,
         Client=TARROW_1.operator,
         Well=TARROW_1.name,
-        Matrix="Washed cuttings, hand-picked",
+        Matrix="Cuttings, hand-picked",
     )
     amended = "Amended report: replaces revision 1. Samples " + ", ".join(reporting.RUN_AGAIN) + " were run again."
     sheet = Sheet(
