@@ -37,7 +37,7 @@ class Command(ServiceCommand):
     def answer(self, **options: Any) -> dict[str, Any]:
         sizes = {name: options[name] for name in ("rows", "files", "file_rows", "runs")}
         if small := [name for name, size in sizes.items() if size < 1]:
-            raise CommandError(f"--{small[0].replace('_', '-')} must be at least 1.")
+            raise CommandError(f"--{small[0].replace('_', '-')} must be at least 1.", returncode=2)
         names = [options["name"]] if options["name"] else list(NAMES)
         with tempfile.TemporaryDirectory(prefix="kerogate-bench-") as home:
             return _measured(home, {"names": names, "sizes": sizes})
