@@ -7,9 +7,12 @@ from django.shortcuts import redirect, render
 from django.views.decorators.http import require_http_methods, require_safe
 
 from labdata.errors import NotAllowed
+from labdata.models import JobState, Project, Result, Sample
 from labdata.pages.common import attempt, open_project, person
+from labdata.pages.work import flag_counts, progress, waiting_for
 from labdata.projects import may_open_project
 from labdata.projects import open_project as create_project
+from qc.models import ReviewSet
 
 
 class ProjectForm(forms.Form):
@@ -25,7 +28,31 @@ class ProjectForm(forms.Form):
 
 @require_safe
 def project(request: HttpRequest, slug: str) -> HttpResponse:
-    return render(request, "projects/project.html", {"project": open_project(request, slug)})
+    """Counts, what waits for the user, wells that have flags, and what happened last."""
+    at_hand = open_project(request, slug)
+    context = {
+        "project": at_hand,
+        "counts": _counts(at_hand),
+        "waiting": waiting_for(person(request), at_hand),
+        "flags": flag_counts(at_hand),
+        "sets": progress(ReviewSet.objects.filter(project=at_hand)),
+        "uploads": at_hand.uploads.select_related("created_by")[:6],
+        "releases": at_hand.releases.all()[:4],
+        "jobs": at_hand.jobs.filter(state__in=[JobState.QUEUED, JobState.RUNNING])[:6],
+    }
+    return render(request, "projects/project.html", context)
+
+
+def _counts(at_hand: Project) -> list[tuple[str, int]]:
+    """How much the project holds."""
+    return [
+        ("wells", at_hand.wells.count()),
+        ("samples", Sample.objects.filter(well__project=at_hand).count()),
+        ("analyses", at_hand.analyses.filter(current=True).count()),
+        ("results", Result.objects.filter(analysis__project=at_hand, current=True).count()),
+        ("reports", at_hand.reports.count()),
+        ("releases", at_hand.releases.count()),
+    ]
 
 
 @require_http_methods(["GET", "POST"])

@@ -1,0 +1,84 @@
+"""How numbers, depths and evidence are written on a page. Nothing is rounded anywhere else."""
+
+import math
+from typing import Any
+
+from django import template
+
+from labdata.models import Result, Sample
+
+register = template.Library()
+
+
+@register.filter
+def metres(value: float | None) -> str:
+    """A depth or elevation to the centimetre, or a dash."""
+    return "–" if value is None else f"{value:.2f}"
+
+
+@register.filter
+def interval(sample: Sample | None) -> str:
+    """Top and base of a sample in metres, or what there is of them."""
+    if sample is None or sample.top_md_m is None:
+        return "–"
+    if sample.base_md_m is None or sample.base_md_m == sample.top_md_m:
+        return f"{sample.top_md_m:.2f}"
+    return f"{sample.top_md_m:.2f} – {sample.base_md_m:.2f}"
+
+
+@register.filter
+def reported_depth(sample: Sample) -> str:
+    """The depth in the laboratory's own words."""
+    ends = [end for end in (sample.top_reported, sample.base_reported) if end]
+    return f"{' – '.join(ends)} {sample.depth_unit_reported}".strip() if ends else "no depth reported"
+
+
+def canonical_decimals(decimals: int, factor: float) -> int:
+    """Decimals of a converted value that say as much as ``decimals`` did before the factor."""
+    shift = round(math.log10(abs(factor))) if factor else 0
+    return min(12, max(0, decimals - shift))
+
+
+@register.filter
+def value(result: Result) -> str:
+    """The canonical value to the reported precision, with its qualifier."""
+    if result.value is None:
+        return f"{result.qualifier} limit not stated"
+    decimals = canonical_decimals(result.decimals, result.column.factor)
+    return f"{result.qualifier}{' ' if result.qualifier else ''}{result.value:.{decimals}f}"
+
+
+@register.filter
+def figure(number: Any) -> str:
+    """Any number to six significant figures at most; other things as they are."""
+    if isinstance(number, bool) or not isinstance(number, int | float):
+        return "–" if number is None else str(number)
+    return f"{number:.6g}"
+
+
+@register.filter
+def evidence(facts: Any) -> list[tuple[str, str]]:
+    """The evidence of a flag as pairs of words."""
+    if not isinstance(facts, dict):
+        return []
+    return [(str(key).replace("_", " "), _plain(item)) for key, item in facts.items()]
+
+
+def _plain(item: Any) -> str:
+    if isinstance(item, dict):
+        return ", ".join(f"{key} {_plain(part)}" for key, part in item.items())
+    if isinstance(item, list | tuple):
+        return ", ".join(_plain(part) for part in item)
+    return figure(item)
+
+
+@register.filter
+def pick(mapping: Any, key: Any) -> Any:
+    """``mapping[key]``, or nothing."""
+    return mapping.get(key, "") if isinstance(mapping, dict) else ""
+
+
+@register.filter
+def kind_words(code: str) -> str:
+    """A code as words: ``already_held`` becomes "already held"."""
+    return str(code).replace("_", " ")
