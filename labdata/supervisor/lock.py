@@ -1,51 +1,28 @@
-"""One service per home folder: a lock that the operating system lets go of when the process ends, however it ends."""
+"""One service per home folder."""
 
-import os
-import sys
+from collections.abc import Iterator
+from contextlib import contextmanager
 from pathlib import Path
-from types import TracebackType
-from typing import Self
 
 from labdata.errors import Conflict
+from labdata.locks import locked
 
-_HELD: set[Path] = set()
-
-
-class HomeLock:
-    """Use as a context manager, also nested. Raises Conflict when another process holds the home."""
-
-    def __init__(self, home: Path) -> None:
-        self._path = home.resolve() / "service.lock"
-        self._handle = -1
-
-    def __enter__(self) -> Self:
-        if self._path in _HELD:
-            return self
-        self._path.parent.mkdir(parents=True, exist_ok=True)
-        handle = os.open(self._path, os.O_RDWR | os.O_CREAT, 0o600)
-        try:
-            _lock(handle)
-        except OSError:
-            os.close(handle)
-            raise Conflict(
-                f"A service already runs on {self._path.parent}.", remedy="Stop it, or use another --home."
-            ) from None
-        self._handle = handle
-        _HELD.add(self._path)
-        return self
-
-    def __exit__(self, kind: type[BaseException] | None, error: BaseException | None, at: TracebackType | None) -> None:
-        if self._handle >= 0:
-            _HELD.discard(self._path)
-            os.close(self._handle)
+_held: set[Path] = set()
 
 
-def _lock(handle: int) -> None:
-    if sys.platform == "win32":
-        import msvcrt  # noqa: PLC0415 - Windows only
-
-        msvcrt.locking(handle, msvcrt.LK_NBLCK, 1)
-    else:
-        import fcntl  # noqa: PLC0415 - not on Windows
-
-        fcntl.flock(handle, fcntl.LOCK_EX | fcntl.LOCK_NB)
+@contextmanager
+def home_lock(home: Path) -> Iterator[None]:
+    """Hold ``home`` during the block; may be nested. Raises Conflict when another process holds it."""
+    path = home.resolve() / "service.lock"
+    if path in _held:
+        yield
+        return
+    try:
+        with locked(path, wait=False):
+            _held.add(path)
+            try:
+                yield
+            finally:
+                _held.discard(path)
+    except BlockingIOError:
+        raise Conflict(f"A service already runs on {home}.", remedy="Stop it, or use another --home.") from None

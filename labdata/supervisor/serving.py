@@ -22,7 +22,7 @@ from labdata.jobs.sweeper import republish_all
 from labdata.jobs.transport import wipe
 from labdata.models import SweeperBeat
 from labdata.supervisor.children import Child
-from labdata.supervisor.lock import HomeLock
+from labdata.supervisor.lock import home_lock
 
 HOST = "127.0.0.1"
 WORKERS = 2
@@ -57,7 +57,7 @@ def serve(port: int, home: Path, on_ready: Callable[[str], None] = announce) -> 
     (``setup.prepare_home``). Raises PortTaken, Conflict when the home is in use, ServiceFailed when the
     children crash again and again.
     """
-    with _stop_signals() as stop, HomeLock(home):
+    with _stop_signals() as stop, home_lock(home):
         port = _free_port(port)
         _begin_afresh(home)
         children = _children(port, home)

@@ -3,6 +3,7 @@
 from collections.abc import Callable
 from pathlib import Path
 
+from django.conf import settings
 from django.core.management import call_command
 from django.db import connection, connections
 from django.db.migrations.executor import MigrationExecutor
@@ -10,6 +11,7 @@ from django.utils import timezone
 
 from labdata import backups, triggers
 from labdata.errors import Conflict
+from labdata.locks import locked
 
 Say = Callable[[str], None]
 
@@ -20,10 +22,19 @@ def prepare_home(home: Path, say: Say) -> None:
     A SQLite database with data in it is copied to ``backups/`` before its schema changes. Raises Conflict when the
     database was made by a newer version.
     """
-    home.mkdir(parents=True, exist_ok=True)
-    migrate(home, say)
+    with locked(home / "set-up.lock", wait=True):
+        migrate(home, say)
     call_command("collectstatic", interactive=False, verbosity=0)
     connections.close_all()
+
+
+def prepare_schema(say: Say) -> None:
+    """Bring the database up to this version if it is not; quick when it is. Raises Conflict like ``migrate``."""
+    with locked(settings.HOME / "set-up.lock", wait=True):
+        executor = MigrationExecutor(connection)
+        wanted = set(executor.loader.graph.leaf_nodes())
+        if not wanted <= set(executor.loader.applied_migrations):
+            migrate(settings.HOME, say)
 
 
 def migrate(home: Path, say: Say) -> None:

@@ -8,7 +8,7 @@ from django.core.management.base import CommandParser
 
 from labdata import backups
 from labdata.management.commands._base import ServiceCommand
-from labdata.supervisor.lock import HomeLock
+from labdata.supervisor.lock import home_lock
 
 
 class Command(ServiceCommand):
@@ -18,7 +18,7 @@ class Command(ServiceCommand):
         parser.add_argument("directory", type=Path, help="the folder that `backup` made")
 
     def answer(self, **options: Any) -> dict[str, Any]:
-        with HomeLock(settings.HOME):
+        with home_lock(settings.HOME):
             source = options["directory"].expanduser().absolute()
             return {"home": str(settings.HOME), **backups.restore(source)}
 

@@ -12,7 +12,7 @@ from labdata import accounts
 from labdata.errors import KerogateError
 from labdata.management.commands._base import ServiceCommand
 from labdata.supervisor import announce, serve
-from labdata.supervisor.lock import HomeLock
+from labdata.supervisor.lock import home_lock
 from labdata.supervisor.setup import prepare_home
 
 
@@ -26,7 +26,7 @@ class Command(ServiceCommand):
 
     def handle(self, *args: Any, **options: Any) -> None:
         try:
-            with HomeLock(settings.HOME):
+            with home_lock(settings.HOME):
                 self._serve(options["port"], as_json=options["json"])
         except KerogateError as refusal:
             self.stderr.write(str(refusal))
