@@ -1,0 +1,86 @@
+"""A table from plain records: for tests, rehearsals and anyone who has values but no database.
+
+A record is a mapping with identity columns (well, label, kind, top_m, ...) and analyte codes; a value is a number or
+the text of a cell (``"<0.05"``, ``"0.90"``), which carries its decimals.
+"""
+
+import re
+from collections.abc import Iterable, Mapping, Sequence
+from typing import Any
+
+import numpy as np
+import pandas as pd
+
+from qc.rules.decimals import batch_of, half_units
+from qc.rules.table import ANALYTES, CORES, IDENTITY, MUDS, TOPS, WELL_COLUMNS, Table, frame, no_things
+
+_CELL = re.compile(r"^\s*([<>~]?)\s*([-+]?(?:\d+\.?(\d*)|\.(\d+)))?\s*$")
+
+
+def read(cell: Any) -> tuple[float, str, int, str] | None:
+    """(value, qualifier, decimals, text) of a cell; None for a blank. Raises ValueError for other text."""
+    if cell is None or (isinstance(cell, float) and np.isnan(cell)) or cell == "":
+        return None
+    text = cell.strip() if isinstance(cell, str) else repr(cell)
+    found = _CELL.match(text)
+    if not found or text in {"", "<", ">", "~"}:
+        raise ValueError(f"{text!r} is not a number with an optional <, > or ~ before it")
+    whole = float(found.group(2)) if found.group(2) else float("nan")
+    decimals = (found.group(3) or found.group(4) or "") if isinstance(cell, str) else text.partition(".")[2].rstrip("0")
+    return whole, found.group(1), len(decimals), text
+
+
+def table_of(
+    records: Iterable[Mapping[str, Any]],
+    *,
+    wells: Sequence[Mapping[str, Any]] = (),
+    tops: Sequence[Sequence[Any]] = (),
+    cores: Sequence[Sequence[Any]] = (),
+    muds: Sequence[Sequence[Any]] = (),
+) -> Table:
+    """The table of the records; ``wells`` in the order of their numbers, the others as rows of ``TOPS``, ``CORES``, ``MUDS``."""
+    listed = [dict(record) for record in records]
+    columns: dict[str, object] = {
+        name: [record.get(name, default) for record in listed] for name, default in IDENTITY.items()
+    }
+    columns["sample"] = [record.get("sample", row) for row, record in enumerate(listed)]
+    columns["line"] = [record.get("line", row + 2) for row, record in enumerate(listed)]
+    columns["unit"] = [record.get("unit", record.get("formation", "")) for record in listed]
+    for place, analyte in enumerate(ANALYTES):
+        columns |= _analyte(listed, analyte, place)
+    count = max([len(wells), *(int(record.get("well", 0)) + 1 for record in listed)])
+    known = pd.DataFrame([dict(well) for well in wells], index=range(len(wells)), columns=list(WELL_COLUMNS)).reindex(
+        range(count)
+    )
+    known["name"], known["uwi"] = known["name"].fillna("Quill 1"), known["uwi"].fillna("")
+    known = known.astype(dict.fromkeys(WELL_COLUMNS[2:], float))
+    return Table(frame(columns, len(listed)), known, _things(tops, TOPS), _things(cores, CORES), _things(muds, MUDS))
+
+
+def _things(rows: Sequence[Sequence[Any]], columns: tuple[str, ...]) -> pd.DataFrame:
+    return pd.DataFrame([list(row) for row in rows], columns=list(columns)) if rows else no_things(*columns)
+
+
+def _analyte(records: list[dict[str, Any]], analyte: str, place: int) -> dict[str, object]:
+    cells = [read(record.get(analyte)) for record in records]
+    present = np.array([cell is not None for cell in cells], dtype=bool)
+    shown = [cell or (np.nan, "", 0, "") for cell in cells]
+    value, qualifier, decimals, text = (list(part) for part in zip(*shown, strict=True)) if shown else ([], [], [], [])
+    rows = np.arange(len(records))
+    half = np.full(len(records), np.nan)
+    if present.any():
+        of = pd.DataFrame(
+            {
+                "column": [record.get("table", 0) for record in records],
+                "batch": [batch_of(str(record.get("label", ""))) for record in records],
+                "d": decimals,
+            }
+        )[present]
+        half[present] = half_units(of["column"], of["batch"], of["d"], of["d"])
+    rejected = [analyte in record.get("rejected", ()) for record in records]
+    return {
+        analyte: np.array(value, dtype=float), f"{analyte}_q": qualifier, f"{analyte}_d": decimals, f"{analyte}_h": half,
+        f"{analyte}_id": np.where(present, rows * len(ANALYTES) + place, -1), f"{analyte}_text": text,
+        f"{analyte}_col": np.where(present, place + 1, -1), f"{analyte}_row": np.where(present, rows, -1),
+        f"{analyte}_rej": np.array(rejected, dtype=bool),
+    }  # fmt: skip
