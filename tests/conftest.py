@@ -7,6 +7,9 @@ from django.db import connections
 from django.test import TransactionTestCase
 
 from labdata import triggers
+from tests.setup.services import leave_out, postgresql_url, rabbitmq_url, redis_url, say_left_out
+
+__all__ = ["postgresql_url", "rabbitmq_url", "redis_url"]
 
 _empty_tables = TransactionTestCase._fixture_teardown
 
@@ -19,6 +22,14 @@ def _empty_guarded_tables(case: TransactionTestCase) -> None:
 
 
 TransactionTestCase._fixture_teardown = _empty_guarded_tables  # type: ignore[method-assign]
+
+
+def pytest_collection_modifyitems(config: pytest.Config, items: list[pytest.Item]) -> None:
+    leave_out(config, items)
+
+
+def pytest_terminal_summary(terminalreporter: Any, config: pytest.Config) -> None:
+    say_left_out(terminalreporter, config)
 
 
 @pytest.fixture(autouse=True)
