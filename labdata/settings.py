@@ -170,6 +170,15 @@ SPECTACULAR_SETTINGS = {
     "OAS_VERSION": "3.1.0",
     "SERVE_INCLUDE_SCHEMA": False,
     "SERVE_PERMISSIONS": ["rest_framework.permissions.AllowAny"],
+    "ENUM_NAME_OVERRIDES": {
+        "JobState": "labdata.models.JobState",
+        "ReviewSetState": "qc.models.ReviewSetState",
+        "Verdict": "qc.models.Verdict",
+    },
+    "POSTPROCESSING_HOOKS": [
+        "drf_spectacular.hooks.postprocess_schema_enums",
+        "labdata.api.schema.with_problems",
+    ],
 }
 
 # Celery carries job ids; the database owns the jobs (labdata/jobs). The broker is named in labdata/celery.py.

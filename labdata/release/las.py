@@ -19,7 +19,20 @@ from labdata.errors import InvalidInput
 
 NULL = "-999.25"
 QUALIFIER_CODES = {"": "0", "<": "-1", ">": "1", "~": "2"}
-FIELDS = ["well", "uwi", "lab", "project", "method", "analyte", "unit", "top_m", "base_m", "tvd_top_m", "value", "qualifier"]
+FIELDS = [
+    "well",
+    "uwi",
+    "lab",
+    "project",
+    "method",
+    "analyte",
+    "unit",
+    "top_m",
+    "base_m",
+    "tvd_top_m",
+    "value",
+    "qualifier",
+]
 ZIP_TIME = (1980, 1, 1, 0, 0, 0)  # the data alone makes the bytes
 Place = tuple[float, float | None]  # top and base [m MD]
 
@@ -69,7 +82,12 @@ def _log(rows: list[dict[str, Any]]) -> str:
     curves, values = _curves(placed)
     places = sorted(values, key=lambda place: (place[0], place[0] if place[1] is None else place[1]))
     tvd = {row["top_m"]: row["tvd_top_m"] for row in placed}
-    lines = [*_head(rows, places), *_curve_lines(curves, values), "~OTHER INFORMATION", *_notes(len(rows) - len(placed))]
+    lines = [
+        *_head(rows, places),
+        *_curve_lines(curves, values),
+        "~OTHER INFORMATION",
+        *_notes(len(rows) - len(placed)),
+    ]
     lines.append("~ASCII LOG DATA")
     columns = list(_columns(curves, values))
     for place in places:

@@ -243,21 +243,25 @@ def _standing(selection: Selection, ids: np.ndarray) -> dict[int, tuple[Any, ...
     for result, pk, held, verdict, reason, text, who, when in (
         rows.order_by("pk").values_list(*fields).iterator(chunk_size=CHUNK)
     ):
-        if selection.signed_only and (held not in selection.signatures or pk > selection.signatures[held].last_decision):
+        if selection.signed_only and (
+            held not in selection.signatures or pk > selection.signatures[held].last_decision
+        ):
             continue
         words = f"{reason}: {text}" if reason and text else reason or text
         standing[result] = (verdict, words, selection.people.get(who, ""), when)
     return standing
 
 
-def _flags(
-    selection: Selection, results: pa.Table, analyses: list[dict[str, Any]], codes: pa.Array
-) -> Iterator[str]:
+def _flags(selection: Selection, results: pa.Table, analyses: list[dict[str, Any]], codes: pa.Array) -> Iterator[str]:
     """Rule ids of the flags on each result: its own, and those on its analysis that name its analyte or none."""
     on_result, on_analysis = _fired(selection, [fact["analysis"] for fact in analyses])
     analysis_ids = results["analysis_id"].to_pylist()
     for result, analysis, code in zip(results["pk"].to_pylist(), analysis_ids, codes.to_pylist(), strict=True):
-        rules = {*on_result.get(result, ()), *on_analysis.get((analysis, code), ()), *on_analysis.get((analysis, ""), ())}
+        rules = {
+            *on_result.get(result, ()),
+            *on_analysis.get((analysis, code), ()),
+            *on_analysis.get((analysis, ""), ()),
+        }
         yield ",".join(sorted(rules)) if rules else ""
 
 
@@ -280,5 +284,3 @@ def _fired(
         elif analysis is not None:
             on_analysis.setdefault((analysis, code), []).append(rule)
     return on_result, on_analysis
-
-

@@ -62,7 +62,7 @@ def prepare_release(ctx: JobContext) -> Callable[[], dict[str, Any]]:
 
     def commit() -> dict[str, Any]:
         _refuse_reopened(selection)
-        made = _insert(project, user, params["title"], selection, described, stored_as)
+        made = _insert(user, params["title"], selection, described, stored_as)
         return {"release": made.pk, "number": made.number, "results": made.result_count, "data_sha256": sha256}
 
     return commit
@@ -109,13 +109,18 @@ def _refuse_reopened(selection: Selection) -> None:
         raise Conflict("A review set was re-opened while the release was built.", remedy="Ask for the release again.")
 
 
-def _insert(
-    project: Project, user: User, title: str, selection: Selection, described: dict[str, Any], stored_as: str
-) -> Release:
+def _insert(user: User, title: str, selection: Selection, described: dict[str, Any], stored_as: str) -> Release:
+    project = selection.project
     Project.objects.select_for_update().get(pk=project.pk)
     number = (Release.objects.filter(project=project).aggregate(last=Max("number"))["last"] or 0) + 1
     now = timezone.now()
-    whole = {**described, "number": number, "title": title, "created_by": user.get_username(), "created_at": now.isoformat()}
+    whole = {
+        **described,
+        "number": number,
+        "title": title,
+        "created_by": user.get_username(),
+        "created_at": now.isoformat(),
+    }
     made = Release.objects.create(
         project=project, number=number, title=title, created_by=user, created_at=now, manifest=whole,
         manifest_sha256=manifests.sha256_of(whole), data_sha256=described["data"]["sha256"], stored_as=stored_as,
@@ -153,7 +158,8 @@ def rebuild(release: Release) -> str:
 
 def _nothing_signed(project: Project) -> NothingSigned:
     return NothingSigned(
-        f"No review set of project «{project.slug}» is signed.", remedy="Decide on a well's results and have them signed."
+        f"No review set of project «{project.slug}» is signed.",
+        remedy="Decide on a well's results and have them signed.",
     )
 
 

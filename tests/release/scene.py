@@ -36,7 +36,9 @@ def analyte(code: str) -> Analyte:
     owner, _ = Method.objects.get_or_create(code=method, defaults={"name": method})
     order = list(ANALYTES).index(code)
     made, _ = Analyte.objects.get_or_create(
-        code=code, project=None, defaults={"name": code, "unit": unit, "method": owner, "inputs": inputs, "order": order}
+        code=code,
+        project=None,
+        defaults={"name": code, "unit": unit, "method": owner, "inputs": inputs, "order": order},
     )
     return made
 
@@ -82,9 +84,17 @@ class Scene:
         )  # fmt: skip
 
     def analysis(
-        self, held: ReviewSet, table: SourceTable, line: int, sample: Sample, method: str, values: dict, replicate: int = 1
+        self,
+        held: ReviewSet,
+        at: tuple[SourceTable, int],
+        sample: Sample,
+        method: str,
+        values: dict,
+        *,
+        replicate: int = 1,
     ) -> Analysis:
         """One analysis with its results; ``values``: analyte -> number, or text with a qualifier ("<0.05")."""
+        table, line = at
         owner, _ = Method.objects.get_or_create(code=method, defaults={"name": method})
         made = Analysis.objects.create(
             project=self.project, sample=sample, method=owner, report=table.report, table=table, line=line,
@@ -138,8 +148,8 @@ def small_scene() -> Scene:
         for number in range(3):
             sample = scene.sample(well, 2000.0 + 10 * number, f"S-{number}", formation="Upper Shale" if number else "")
             values = {"S1": "<0.05" if number == 0 else 0.5 + number, "S2": 5.0 + number, "TMAX": 431.0, "HI": 250.5}
-            scene.analysis(held, table, 5 + number, sample, "pyrolysis", values)
-            scene.analysis(held, table, 5 + number, sample, "carbon", {"TOC": 2.125})
+            scene.analysis(held, (table, 5 + number), sample, "pyrolysis", values)
+            scene.analysis(held, (table, 5 + number), sample, "carbon", {"TOC": 2.125})
     return scene
 
 
