@@ -9,10 +9,10 @@ from django.views.decorators.http import require_http_methods, require_safe
 from labdata.errors import NotAllowed
 from labdata.models import JobState, Project, Result, Sample
 from labdata.pages.common import attempt, open_project, person
-from labdata.pages.work import flag_counts, progress, waiting_for
+from labdata.pages.work import flag_counts, waiting_for
 from labdata.projects import may_open_project
 from labdata.projects import open_project as create_project
-from qc.models import ReviewSet
+from qc.review.worklist import work_list
 
 
 class ProjectForm(forms.Form):
@@ -35,7 +35,7 @@ def project(request: HttpRequest, slug: str) -> HttpResponse:
         "counts": _counts(at_hand),
         "waiting": waiting_for(person(request), at_hand),
         "flags": flag_counts(at_hand),
-        "sets": progress(ReviewSet.objects.filter(project=at_hand)),
+        "lines": work_list(at_hand, person(request)),
         "uploads": at_hand.uploads.select_related("created_by")[:6],
         "releases": at_hand.releases.all()[:4],
         "jobs": at_hand.jobs.filter(state__in=[JobState.QUEUED, JobState.RUNNING])[:6],

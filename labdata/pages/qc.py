@@ -54,11 +54,11 @@ def qc_runs(request: HttpRequest, slug: str) -> HttpResponse:
 @require_POST
 def qc_start(request: HttpRequest, slug: str) -> HttpResponse:
     """Run the rules now on the wells named, or on all."""
-    from qc.services import start_run  # noqa: PLC0415
-
     project = open_project(request, slug, Action.RUN_QC)
     named = [pk for pk in request.POST.getlist("well") if pk.isdigit()]
     wells = [find(project.wells.all(), "well", pk=int(pk)) for pk in named] or list(project.wells.all())
+    from qc.services import start_run  # noqa: PLC0415
+
     job = start_run(project, wells, person(request))
     messages.success(request, f"QC of {len(wells)} well{'' if len(wells) == 1 else 's'} is on its way.")
     return redirect("job", slug, job.pk)

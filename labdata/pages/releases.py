@@ -12,11 +12,11 @@ from labdata.access import Action, visible
 from labdata.audit import canonical
 from labdata.models import Project, Release
 from labdata.pages.common import attempt, find, open_project, page_of, person
-from labdata.pages.work import progress
 from labdata.release.export import FORMATS
 from labdata.release.pull import pull_release
 from labdata.release.services import TITLE_LENGTH, request_release, withdraw
 from qc.models import ReviewSet, ReviewSetState
+from qc.review.worklist import work_list
 
 SHAPE_WORDS = {"long": "one row a result", "wide": "one row an analysis"}
 
@@ -54,11 +54,11 @@ def release_new(request: HttpRequest, slug: str) -> HttpResponse:
         if made:
             messages.success(request, "The release is being built.")
             return redirect("job", slug, made.pk)
-    sets = progress(ReviewSet.objects.filter(project=project))
+    lines = work_list(project, person(request))
     context = {
         "form": form,
-        "signed": [one for one in sets if one.review_set.state == ReviewSetState.SIGNED],
-        "open": [one for one in sets if one.review_set.state == ReviewSetState.OPEN and one.results],
+        "signed": [line for line in lines if line.signature],
+        "open": [line for line in lines if not line.signature and line.results],
     }
     return render(request, "releases/release_new.html", context)
 

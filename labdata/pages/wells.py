@@ -14,9 +14,9 @@ from django.views.decorators.http import require_http_methods, require_POST, req
 from labdata.access import Action, visible
 from labdata.models import Analysis, Project, Report, Sample, Well
 from labdata.pages.common import attempt, find, open_project, page_of, person
-from labdata.pages.work import progress
 from labdata.registry.edits import ALONG, HEADER, add_along, edit_well, remove_along
-from qc.models import Flag, ReviewSet
+from qc.models import Flag
+from qc.review.worklist import work_list
 
 ALONG_TITLES = {
     "top": "Formation tops",
@@ -27,6 +27,13 @@ ALONG_TITLES = {
     "alias": "Other names",
     "identifier": "Further identifiers",
 }
+LABELS = {
+    "top_md_m": "Top [m MD]", "base_md_m": "Base [m MD]", "md_m": "Depth [m MD]", "recovered_m": "Recovered [m]",
+    "shift_to_log_m": "Shift to log [m]", "diameter_in": "Diameter [in]", "inclination_deg": "Inclination [°]",
+    "azimuth_deg": "Azimuth [°]", "datum_kind": "Depth datum", "datum_elevation_m": "Datum elevation [m]",
+    "ground_elevation_m": "Ground elevation [m]", "water_depth_m": "Water depth [m]", "td_md_m": "Total depth [m MD]",
+    "latitude": "Latitude [°]", "longitude": "Longitude [°]", "crs": "Reference system",
+}  # fmt: skip
 RELATED = {"top": "tops", "core": "core_runs", "casing": "casing_shoes", "mud": "muds", "station": "survey",
            "alias": "aliases", "identifier": "identifiers"}  # fmt: skip
 
@@ -39,6 +46,7 @@ class WellForm(forms.ModelForm):  # type: ignore[type-arg]
     class Meta:
         model = Well
         fields = HEADER
+        labels = LABELS
 
 
 def of_project(request: HttpRequest, project: Project) -> QuerySet[Well]:
@@ -87,7 +95,7 @@ def well(request: HttpRequest, slug: str, pk: int) -> HttpResponse:
         "well": at_hand,
         "page": page_of(request, samples.order_by("top_md_m", "label", "pk"), 100),
         "flags": flags.values("rule", "severity").annotate(n=Count("pk")),
-        "sets": progress(ReviewSet.objects.filter(well=at_hand)),
+        "lines": [line for line in work_list(project, person(request)) if line.review_set.well_id == at_hand.pk],
         "reports": Report.objects.filter(analyses__sample__well=at_hand).select_related("laboratory", "source_file")
         .annotate(n=Count("analyses", filter=Q(analyses__sample__well=at_hand))),
     }  # fmt: skip
@@ -128,7 +136,7 @@ def _desk(at_hand: Well, form: forms.Form, kind: str = "", sent: forms.Form | No
 
 def _along_form(kind: str) -> type[forms.ModelForm]:  # type: ignore[type-arg]
     fields = [f.name for f in ALONG[kind]._meta.concrete_fields if f.name not in {"id", "well", "name_key"}]
-    return modelform_factory(ALONG[kind], fields=fields)
+    return modelform_factory(ALONG[kind], fields=fields, labels=LABELS)
 
 
 @require_POST

@@ -1,9 +1,12 @@
 """How numbers, depths and evidence are written on a page. Nothing is rounded anywhere else."""
 
 import math
+from datetime import datetime, timedelta
 from typing import Any
 
 from django import template
+from django.utils import timezone
+from django.utils.timesince import timesince
 
 from labdata.models import Result, Sample
 
@@ -76,6 +79,14 @@ def _plain(item: Any) -> str:
 def pick(mapping: Any, key: Any) -> Any:
     """``mapping[key]``, or nothing."""
     return mapping.get(key, "") if isinstance(mapping, dict) else ""
+
+
+@register.filter
+def age(since: datetime | None) -> str:
+    """How long ago, in its largest unit, or "just now"."""
+    if since is None:
+        return ""
+    return "just now" if timezone.now() - since < timedelta(minutes=1) else timesince(since, depth=1)
 
 
 @register.filter
