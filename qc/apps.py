@@ -12,9 +12,18 @@ def _guard_tables(using: str, **_: Any) -> None:
     triggers.install(connections[using])
 
 
+def _seed_rule_set(using: str, **_: Any) -> None:
+    """Keep the standard rule set as shipped: idempotent, and there again after a flush."""
+    from qc import models, rulesets  # noqa: PLC0415
+
+    if models.RuleSet._meta.db_table in connections[using].introspection.table_names():
+        rulesets.seed(using)
+
+
 class QcConfig(AppConfig):
     name = "qc"
     verbose_name = "quality control and review"
 
     def ready(self) -> None:
         post_migrate.connect(_guard_tables, sender=self)
+        post_migrate.connect(_seed_rule_set, sender=self)

@@ -54,7 +54,9 @@ class Witness:
         others = [self.table.name(row) for row in finding.rows[:SAMPLES_LISTED]]
         if others:
             made["samples"], made["samples_count"] = others, len(finding.rows)
-        if finding.row is not None:
+        if finding.row is None:
+            made.setdefault("interval_m", self._interval(finding.rows))
+        else:
             made["depth"] = self._depth(finding.row)
             made["neighbours"] = self.neighbours(finding)
         return plain(made)
@@ -86,6 +88,11 @@ class Witness:
             "result": column[f"{analyte}_id"][row],
         }  # fmt: skip
         return {**made, "sample": self.table.name(row)} if tell else made
+
+    def _interval(self, rows: tuple[int, ...]) -> list[float]:
+        """From the shallowest top to the deepest end of the samples [m]."""
+        depths = self.table.rows.loc[list(rows), ["top_m", "base_m"]]
+        return [float(depths["top_m"].min()), float(depths.max(axis=1).max())]
 
     def _depth(self, row: int) -> dict[str, Any]:
         column = self._columns
