@@ -13,6 +13,7 @@ from labdata.access import Action, visible
 from labdata.models import Project, Well
 from labdata.pages.common import find, open_project, page_of, person
 from qc.models import Flag, QcRun, Severity
+from qc.services import start_run
 
 OUTCOMES = ("pass", "fire", "not_applicable", "cannot_evaluate")
 
@@ -57,8 +58,6 @@ def qc_start(request: HttpRequest, slug: str) -> HttpResponse:
     project = open_project(request, slug, Action.RUN_QC)
     named = [pk for pk in request.POST.getlist("well") if pk.isdigit()]
     wells = [find(project.wells.all(), "well", pk=int(pk)) for pk in named] or list(project.wells.all())
-    from qc.services import start_run  # noqa: PLC0415
-
     job = start_run(project, wells, person(request))
     messages.success(request, f"QC of {len(wells)} well{'' if len(wells) == 1 else 's'} is on its way.")
     return redirect("job", slug, job.pk)

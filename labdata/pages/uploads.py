@@ -12,6 +12,7 @@ from django.views.decorators.http import require_http_methods, require_POST, req
 
 from labdata.access import Action, visible
 from labdata.errors import KerogateError
+from labdata.intake.services import answer_questions, receive
 from labdata.models import Project, SourceFile, Upload
 from labdata.pages.common import find, open_project, page_of, person
 from labdata.pages.files import FilesField
@@ -74,8 +75,6 @@ def _receive_all(request: HttpRequest, project: Project, form: UploadForm) -> li
 
 
 def _receive(request: HttpRequest, project: Project, file: UploadedFile, asked: dict[str, Any]) -> Upload:
-    from labdata.intake.services import receive
-
     return receive(
         project=project, name=file.name or "unnamed", content=file.read(), user=person(request),
         lab=asked["lab"], well=asked["well"], create_wells=asked["create_wells"],
@@ -135,8 +134,6 @@ def upload_answer(request: HttpRequest, slug: str, pk: int) -> HttpResponse:
     if not given:
         messages.error(request, "No answer was chosen. Choose one for at least one question.")
     else:
-        from labdata.intake.services import answer_questions
-
         answer_questions(upload=at_hand, user=person(request), answers=given)
         messages.success(request, "Thank you: the file is read again with your answers.")
     return redirect("upload", slug, pk)
