@@ -237,7 +237,7 @@ def _verdicts(selection: Selection, results: pa.Table, analyses: list[dict[str, 
 
 def _standing(selection: Selection, ids: np.ndarray) -> dict[int, tuple[Any, ...]]:
     """Result -> (verdict, reason, decided by, decided at) of its latest decision that counts."""
-    rows = among(Decision.objects.filter(review_set__project=selection.project), np.unique(ids), "result")
+    rows = among(Decision.objects.filter(review_set__project=selection.project), np.unique(ids), "result__pk")
     fields = ("result_id", "pk", "review_set_id", "verdict", "reason", "text", "decided_by_id", "decided_at")
     standing: dict[int, tuple[Any, ...]] = {}
     for result, pk, held, verdict, reason, text, who, when in (
