@@ -36,8 +36,12 @@ KINDS = {
 
 
 def find(kind: str) -> Kind:
-    """The kind by its name, with those that settings add. Raises ValueError naming the known ones."""
-    known: dict[str, Kind] = {**KINDS, **getattr(settings, "JOB_KINDS_EXTRA", {})}
+    """The kind by its name. Raises ValueError naming the known ones.
+
+    The setting JOB_KINDS_EXTRA may name a mapping of further kinds by its dotted path.
+    """
+    further = getattr(settings, "JOB_KINDS_EXTRA", "")
+    known: dict[str, Kind] = {**KINDS, **(import_string(further) if further else {})}
     if kind not in known:
         raise ValueError(f"There is no kind of job «{kind}»; known are {', '.join(sorted(known))}.")
     return known[kind]

@@ -6,7 +6,7 @@ from tests.jobs import probes
 @pytest.fixture
 def probe_kinds(settings):
     """The probes as further kinds of job, and a place for what they leave."""
-    settings.JOB_KINDS_EXTRA = probes.KINDS
+    settings.JOB_KINDS_EXTRA = "tests.jobs.probes.KINDS"
     settings.JOB_LEASE_SECONDS = 1.0
     probes.CALLS.clear()
 

@@ -74,7 +74,7 @@ def call(ctx):
 CALLS = {}
 
 KINDS = {
-    "probe": Kind("tests.jobs.probes.work"),
+    "probe": Kind("tests.jobs.probes.work", max_attempts=12),
     "refuse": Kind("tests.jobs.probes.refuse"),
     "break": Kind("tests.jobs.probes.break_down"),
     "hang": Kind("tests.jobs.probes.hang", stall_seconds=1, max_attempts=2),
