@@ -15,7 +15,7 @@ LIST_AND_POST = {"get": "list", "post": "create"}
 
 
 def _list(name: str, view: type[ReadView], actions: dict[str, str]) -> URLPattern:
-    return path(name, view.as_view(actions), name=f"api-{name}")
+    return path(name, view.as_view(actions, detail=False), name=f"api-{name}")
 
 
 def _one(name: str, view: type[ReadView], pattern: str = r"(?P<pk>[0-9]{1,18})") -> URLPattern:

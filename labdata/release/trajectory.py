@@ -1,8 +1,12 @@
-"""True vertical depth along a surveyed borehole."""
+"""True vertical depth of samples along a surveyed borehole."""
 
 from collections.abc import Sequence
 
 import numpy as np
+
+from qc.rules.survey import dogleg, path, ratio_factor
+
+STRAIGHT = 1e-9  # rad
 
 
 def tvd_of(depths_md_m: Sequence[float | None], survey: Sequence[Sequence[float]]) -> list[float | None]:
@@ -15,36 +19,27 @@ def tvd_of(depths_md_m: Sequence[float | None], survey: Sequence[Sequence[float]
     stations = np.asarray(survey, dtype=float)
     if stations[0, 0] > 0:
         stations = np.vstack([[0.0, 0.0, stations[0, 2]], stations])
-    md, tangents = stations[:, 0], _tangents(stations)
-    angles = np.arccos(np.clip((tangents[:-1] * tangents[1:]).sum(axis=1), -1.0, 1.0))
-    drops = [
-        _drop(length, angle, tangents[i, 2], tangents[i + 1, 2], 1.0)
-        for i, (length, angle) in enumerate(zip(np.diff(md), angles, strict=True))
-    ]
-    tops = md[0] + np.concatenate([[0.0], np.cumsum(drops)])
-    found: list[float | None] = []
-    for depth in depths_md_m:
-        if depth is None or depth < md[0] or depth > md[-1]:
-            found.append(None)
-            continue
-        i = min(int(np.searchsorted(md, depth, side="right")) - 1, len(md) - 2)
-        share = (depth - md[i]) / (md[i + 1] - md[i])
-        found.append(float(tops[i] + _drop(depth - md[i], angles[i], tangents[i, 2], tangents[i + 1, 2], share)))
-    return found
+    known = np.array([np.nan if depth is None else depth for depth in depths_md_m], dtype=float)
+    inside = (known >= stations[0, 0]) & (known <= stations[-1, 0])
+    found = np.full(len(known), np.nan)
+    if len(stations) > 1:
+        found[inside] = _along(known[inside], stations)
+    elif inside.any():
+        found[inside] = known[inside]
+    return [None if np.isnan(tvd) else float(tvd) for tvd in found]
 
 
-def _tangents(stations: np.ndarray) -> np.ndarray:
-    """Unit vectors (north, east, down) along the hole."""
-    inclination, azimuth = np.radians(stations[:, 1]), np.radians(stations[:, 2])
-    flat = np.sin(inclination)
-    return np.column_stack([flat * np.cos(azimuth), flat * np.sin(azimuth), np.cos(inclination)])
-
-
-def _drop(length: float, angle: float, down_here: float, down_next: float, share: float) -> float:
-    """Vertical extent of the first ``length`` of an arc that turns by ``angle`` [rad]; ``share`` of it is covered."""
-    if angle < 1e-9:
-        return length * down_here
-    down_there = (np.sin((1 - share) * angle) * down_here + np.sin(share * angle) * down_next) / np.sin(angle)
-    turned = share * angle
-    factor = 1.0 if turned < 1e-9 else 2 / turned * np.tan(turned / 2)
-    return float(length / 2 * (down_here + down_there) * factor)
+def _along(md: np.ndarray, stations: np.ndarray) -> np.ndarray:
+    """TVD at depths between the first and the last station: the arc of each piece, cut at the depth."""
+    lengths, inc, azi = stations[:, 0], np.radians(stations[:, 1]), np.radians(stations[:, 2])
+    tops = lengths[0] + path(*stations.T)[0]
+    piece = np.clip(np.searchsorted(lengths, md, side="right") - 1, 0, len(lengths) - 2)
+    covered = md - lengths[piece]
+    share = covered / np.diff(lengths)[piece]
+    beta = dogleg(inc[:-1], azi[:-1], inc[1:], azi[1:])[piece]
+    here, there = np.cos(inc[piece]), np.cos(inc[piece + 1])
+    bent = beta > STRAIGHT
+    safe = np.where(bent, beta, 1.0)
+    turned = (np.sin((1 - share) * safe) * here + np.sin(share * safe) * there) / np.sin(safe)
+    down = np.where(bent, turned, here)
+    return tops[piece] + covered / 2 * (here + down) * ratio_factor(share * beta)

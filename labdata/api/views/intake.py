@@ -16,6 +16,7 @@ from labdata.api.base import Body, ListAndDetailView, ReadView, accepted, checke
 from labdata.api.idempotency import once
 from labdata.api.schema import IDEMPOTENCY_KEY
 from labdata.errors import NotFound
+from labdata.intake import services
 from labdata.models import Job, Upload
 
 
@@ -82,8 +83,6 @@ class Uploads(ListAndDetailView):
     @once
     def create(self, request: Request) -> Response:
         """Send a file. 202 with the upload and the job that reads it (no job when the bytes are held already)."""
-        from labdata.intake import services  # noqa: PLC0415
-
         data = checked(UploadBody, request)
         project = self.caller.project(data["project"])
         self.caller.require(project, Action.UPLOAD)
@@ -98,8 +97,6 @@ class Uploads(ListAndDetailView):
     @once
     def answer(self, request: Request, pk: str) -> Response:
         """Answer the questions of a waiting upload; it is read again."""
-        from labdata.intake import services  # noqa: PLC0415
-
         upload = self.caller.find(self.rows, int(pk), "upload")
         self.caller.require(upload.project, Action.UPLOAD)
         data = checked(AnswersBody, request)

@@ -15,6 +15,7 @@ from labdata.api.schema import IDEMPOTENCY_KEY
 from labdata.models import Project, Well
 from labdata.registry.names import name_key
 from qc.models import QcRun, RuleSet
+from qc.services import start_run
 
 
 @extend_schema(tags=["qc"])
@@ -69,11 +70,9 @@ class QcRuns(ListAndDetailView):
     @once
     def create(self, request: Request) -> Response:
         """Run the rules over wells of a project (all, unless told). 202 with the job."""
-        from qc.services import start_run  # noqa: PLC0415
-
         data = checked(QcRunBody, request)
         project = self.caller.project(data["project"])
         self.caller.require(project, Action.RUN_QC)
         wells = wells_named(self.caller, project, data["wells"])
-        job = start_run(project, wells, self.caller.user)
+        job = start_run(project, wells or None, self.caller.user)
         return accepted(job, {"job": serializers.JobOut(job).data})

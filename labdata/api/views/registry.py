@@ -103,7 +103,8 @@ def long_rows(results: list[Result]) -> list[dict[str, Any]]:
     for project in Project.objects.filter(pk__in=by_project):
         chosen: QuerySet[Result] = Result.objects.filter(pk__in=by_project[project.pk])
         for row in long_table(project, chosen).to_pylist():
-            rows[row["result"]] = {"id": row.pop("result"), "analysis": row.pop("analysis"), **row}
+            pk = row.pop("result")
+            rows[pk] = {"id": pk, **row}
     return [rows[result.pk] for result in results]
 
 

@@ -1,0 +1,62 @@
+"""What the API tests share: a project under review with one person a role, and clients with tokens."""
+
+import pytest
+from rest_framework.test import APIClient
+
+from labdata.models import Project
+from labdata.release.services import prepare_release, request_release
+from labdata.tokens import issue_token
+from tests.factories import PASSWORD
+from tests.release.scene import Scene, signed_scene, small_scene
+
+
+@pytest.fixture
+def scene(db) -> Scene:
+    return small_scene()
+
+
+@pytest.fixture
+def signed(db) -> Scene:
+    return signed_scene()
+
+
+def client_of(user, project: Project, scope: str = "write") -> APIClient:
+    """A client with a token of the user."""
+    client = APIClient()
+    client.credentials(HTTP_AUTHORIZATION=f"Token {issue_token(user, project, scope)}")
+    return client
+
+
+def client_for(scene: Scene, role: str, scope: str = "write") -> APIClient:
+    return client_of(scene.person(role), scene.project, scope)
+
+
+def signed_in(user) -> APIClient:
+    """A client with a session, and CSRF checks as a browser meets them."""
+    client = APIClient(enforce_csrf_checks=True)
+    assert client.login(username=user.username, password=PASSWORD)
+    return client
+
+
+class HandContext:
+    """A job run by hand, inside the test's own transaction."""
+
+    def __init__(self, job):
+        self.job = job
+
+    def tick(self, *args, **kwargs):
+        pass
+
+    def step(self, note, allow=0):
+        from contextlib import nullcontext  # noqa: PLC0415
+
+        return nullcontext()
+
+
+def release_of(scene: Scene, title: str = "First look"):
+    """A release made by the job's own handler, without a worker."""
+    from labdata.models import Release  # noqa: PLC0415
+
+    job = request_release(project=scene.project, user=scene.person("approver"), title=title)
+    made = prepare_release(HandContext(job))()
+    return Release.objects.get(pk=made["release"])
