@@ -146,7 +146,7 @@ TURNED_ROW = "SA-027"
 
 FAULTS = (
     Fault("oil_based_mud", "Oil-based mud below 2520 m: base oil in the cuttings raises S1, PI and OSI.",
-          TARROW_1, OILY, ("free_oil_crossover", "pi_high_for_maturity"), ROCK, oil_based_mud),
+          TARROW_1, OILY, ("free_oil_crossover", "pi_high_for_maturity", "oil_based_fluid_interval"), ROCK, oil_based_mud),
     Fault("matrix_retention", "Clay of the Corvane Shale holds hydrocarbons back from S2: lean samples show too low an HI.",
           TARROW_1, (), ("s2_toc_fit",), ROCK, leave_as_is, formation=CORVANE.name),
     Fault("fibre_pill", "A cellulose fibre pill against losses at 2210 m: S2 of the fibre peaks far below rock.",

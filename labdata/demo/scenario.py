@@ -12,9 +12,10 @@ from django.contrib.auth.models import User
 from labdata.demo import people, register, reviewing
 from labdata.demo.basin import PROJECT_SLUG, TARROW_1, TARROW_2
 from labdata.demo.workbooks import AMENDED, DemoFile, files
+from labdata.errors import Conflict
 from labdata.intake.services import receive
 from labdata.jobs import run_all_here
-from labdata.models import Project, Release, Upload
+from labdata.models import JobState, Project, Release, Upload
 from labdata.release.selection import signatures_in_force
 from labdata.release.services import build_release
 from qc.models import ReviewSet, ReviewSetState
@@ -93,6 +94,10 @@ def take_in(stage: Stage, file: DemoFile) -> Upload:
     )  # fmt: skip
     run_all_here(stage.project)
     upload.refresh_from_db()
+    if upload.job and upload.job.state == JobState.FAILED:
+        raise Conflict(
+            f"{file.name} did not come in: {upload.job.error_message}", remedy="Run the demonstration again."
+        )
     stage.say(f"Intake of {file.name}: {upload.get_outcome_display()}")
     return upload
 

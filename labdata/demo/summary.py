@@ -52,7 +52,7 @@ def _flags(project: Project) -> dict[str, int]:
 
 
 def _fault(project: Project, fault: Fault) -> dict[str, Any]:
-    """A fault is caught when each of its rules has spoken of one of its samples (or of its formation), in any run."""
+    """A fault is caught when each of its rules has spoken of it, in any run."""
     caught = caught_by(project, fault)
     return {
         "fault": fault.code, "story": fault.story, "well": fault.well.name, "samples": list(fault.labels),
@@ -61,12 +61,8 @@ def _fault(project: Project, fault: Fault) -> dict[str, Any]:
 
 
 def caught_by(project: Project, fault: Fault) -> list[str]:
-    """Rules that flagged a sample of the fault, or for a fault of a whole formation, that name it."""
+    """Rules that flagged a sample of the fault, and those of its rules that spoke of its formation or whole well."""
     flags = Flag.objects.filter(well__project=project, well__name=fault.well.name)
-    if fault.labels:
-        found = flags.filter(analysis__sample__label__in=fault.labels).values_list("rule", flat=True)
-        return sorted(set(found))
-    named = [
-        flag.rule for flag in flags.filter(rule__in=fault.rules) if fault.formation in f"{flag.message} {flag.evidence}"
-    ]
-    return sorted(set(named))
+    found = set(flags.filter(analysis__sample__label__in=fault.labels).values_list("rule", flat=True))
+    of_sets = flags.filter(analysis__isnull=True, rule__in=fault.rules)
+    return sorted(found | {flag.rule for flag in of_sets if fault.formation in f"{flag.message} {flag.evidence}"})

@@ -10,7 +10,7 @@ from django.core.management.base import CommandParser
 from labdata.errors import KerogateError
 from labdata.management.commands._base import ServiceCommand
 from labdata.supervisor import announce, serve
-from labdata.supervisor.lock import HomeLock
+from labdata.supervisor.lock import home_lock
 from labdata.supervisor.setup import prepare_home
 
 
@@ -25,7 +25,7 @@ class Command(ServiceCommand):
 
     def handle(self, *args: Any, **options: Any) -> None:
         try:
-            with HomeLock(settings.HOME):
+            with home_lock(settings.HOME):
                 if options["once"]:
                     self._once(as_json=options["json"])
                 else:
