@@ -1,5 +1,19 @@
-"""Addresses of this room."""
+"""Addresses of this room, under /p/SLUG/review/."""
 
-from django.urls import URLPattern, URLResolver
+from django.urls import URLPattern, URLResolver, path
 
-urlpatterns: list[URLPattern | URLResolver] = []
+from qc.review import plain, views
+
+urlpatterns: list[URLPattern | URLResolver] = [
+    path("", views.review_sets, name="review_sets"),
+    path("<int:pk>/", views.review, name="review"),
+    path("<int:pk>/data/", views.review_data, name="review_data"),
+    path("<int:pk>/flags/<int:flag>/", views.review_flag, name="review_flag"),
+    path("<int:pk>/plain/", plain.review_plain, name="review_plain"),
+    path("<int:pk>/decide/", views.review_decide, name="review_decide"),
+    path("<int:pk>/accept/", views.review_accept, name="review_accept"),
+    path("<int:pk>/undo/", views.review_undo, name="review_undo"),
+    path("<int:pk>/answer/", views.review_answer, name="review_answer"),
+    path("<int:pk>/sign/", views.review_sign, name="review_sign"),
+    path("<int:pk>/reopen/", views.review_reopen, name="review_reopen"),
+]
