@@ -1,4 +1,5 @@
 from django.apps import AppConfig
+from django.db.models.signals import post_migrate
 
 
 class LabdataConfig(AppConfig):
@@ -6,5 +7,8 @@ class LabdataConfig(AppConfig):
     verbose_name = "laboratory data"
 
     def ready(self) -> None:
-        """Make the Celery application current, so that shared tasks belong to it in every process."""
+        """Make the Celery application current, and seed methods and analytes after every migration."""
         from labdata import celery  # noqa: F401, PLC0415
+        from labdata.registry.catalogue import seed  # noqa: PLC0415
+
+        post_migrate.connect(seed, sender=self, dispatch_uid="labdata.catalogue")

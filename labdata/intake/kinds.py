@@ -1,0 +1,51 @@
+"""Words for sample kinds and for the roles of rows."""
+
+import re
+from functools import cache
+
+from labdata.intake.fields import synonyms
+from labdata.intake.headers import fold
+
+
+@cache
+def _kind_words() -> dict[str, str]:
+    return {fold(word): kind for kind, words in synonyms()["kinds"].items() for word in words}
+
+
+def kind_of(text: str) -> str | None:
+    """The sample kind a word means, "unknown" for "not stated", None for a word that is none."""
+    key = fold(text)
+    return (
+        _kind_words().get(key)
+        or _kind_words().get(key.removesuffix("s"))
+        or _kind_words().get(key.removesuffix("sample").removesuffix("samples"))
+    )
+
+
+@cache
+def _role_words() -> list[tuple[str, str]]:
+    pairs = [(word, role) for role, words in synonyms()["roles"].items() for word in words]
+    return sorted(pairs, key=lambda pair: -len(pair[0]))
+
+
+def role_of(text: str) -> str:
+    """ "blank", "reference", "duplicate" or "summary" when the text is or begins with such a word, else ""."""
+    plain = " ".join(re.sub(r"[_\-./:]+", " ", text.casefold()).split())
+    for word, role in _role_words():
+        if plain == word or (
+            role != "summary" and len(word) > 1 and re.match(rf"{re.escape(word)}(?:\s|\d|#|$)", plain)
+        ):
+            return role
+    return ""
+
+
+def reference_name(label: str) -> str:
+    """The material's name: the label without the word that marks it, unless nothing is left."""
+    plain = label
+    for word, role in _role_words():
+        if role == "reference":
+            shorter = re.sub(rf"^\s*{re.escape(word)}\b[\s:_\-.]*", "", plain, flags=re.I)
+            if shorter != plain:
+                plain = shorter
+                break
+    return (plain.strip() or label.strip() or "reference material")[:120]

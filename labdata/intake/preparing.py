@@ -1,0 +1,227 @@
+"""From bytes to a Prepared file: read, find the tables, map, read values, match wells, settle the report's version."""
+
+import time
+from collections.abc import Callable
+from dataclasses import dataclass, field
+
+from labdata.intake import values, workbook
+from labdata.intake.columns import Column, Mapping, map_columns
+from labdata.intake.errors import UnreadableFile
+from labdata.intake.findings import Findings
+from labdata.intake.matching import SampleDirectory, WellDirectory, WellMatcher
+from labdata.intake.prepared import Prepared, PreparedTable
+from labdata.intake.reading import Cells, Teller, decimal_comma, read_column
+from labdata.intake.rows import Row, RowReader
+from labdata.intake.tables import Layout, Table, find_tables
+from labdata.intake.titles import Facts, read_title
+from labdata.intake.unitchoice import choose_units
+from labdata.intake.versions import settle_version
+from labdata.intake.wellhead import well_details
+from labdata.intake.workbook import Sheet, address
+from labdata.models import Project
+
+Tick = Callable[[str], None]
+
+
+@dataclass
+class Request:
+    """What came with the file: names, permission to make wells, answers given."""
+
+    project: Project
+    name: str
+    content: bytes
+    sha256: str
+    lab: str = ""
+    well: str = ""
+    create_wells: bool = False
+    answers: dict[str, str] = field(default_factory=dict)
+
+
+def prepare_file(request: Request, tick: Tick) -> Prepared:
+    """Read and match one file outside any transaction. Whatever is wrong with it ends up in the findings."""
+    started = time.perf_counter()
+    made = Prepared(request.project, request.name, request.sha256, Findings(dict(request.answers)))
+    try:
+        book = workbook.read(request.name, request.content)
+    except UnreadableFile as trouble:
+        made.findings.error(trouble.code, trouble.message, remedy=trouble.remedy, value=request.name)
+    else:
+        _FileReader(request, made, tick, WellDirectory(request.project)).take(book)
+    made.seconds = time.perf_counter() - started
+    return made
+
+
+@dataclass
+class _FileReader:
+    """Takes one workbook in: its sheets, their tables, the wells they name."""
+
+    request: Request
+    made: Prepared
+    tick: Tick
+    directory: WellDirectory
+    whole: Facts = field(default_factory=Facts)
+    named: list[tuple[Row, str, str]] = field(default_factory=list)
+
+    @property
+    def findings(self) -> Findings:
+        return self.made.findings
+
+    def take(self, book: workbook.Workbook) -> None:
+        """Fill ``made`` from the workbook."""
+        layouts = [(sheet, find_tables(sheet)) for sheet in book.sheets]
+        for name in book.hidden:
+            message = f"Sheet «{name}» is hidden and was not read."
+            self.findings.note("hidden_sheet", message, sheet=name, remedy="Show it if it holds results.")
+        if not any(layout.tables for _, layout in layouts):
+            _no_table(self.request.name, layouts, self.findings)
+            return
+        self.whole = read_title([line for _, layout in layouts for line in layout.title])
+        for sheet, layout in layouts:
+            self._sheet(sheet, layout)
+        self.tick("matching wells and samples")
+        matcher = WellMatcher(self.directory, self.findings, self.request.create_wells)
+        self.made.wells = matcher.match(self.named)
+        well_details(self.made)
+        self.made.laboratory = self.request.lab or self.whole.laboratory
+        self.made.reported_on = self.whole.reported_on
+        settle_version(self.request.name, self.whole, self.made)
+
+    def _sheet(self, sheet: Sheet, layout: Layout) -> None:
+        facts = read_title(layout.title)
+        facts.depth_unit = facts.depth_unit or self.whole.depth_unit
+        facts.nd = facts.nd or self.whole.nd
+        for table in layout.tables:
+            self.tick(f"reading {sheet.name or self.request.name}")
+            prepared, mapping = _take_table(table, facts, self.findings)
+            self.made.tables.append(prepared)
+            self._name_wells(sheet, facts, mapping, prepared)
+        if not layout.tables and layout.title:
+            message = f"Sheet «{sheet.name}» holds no table of results and was not read."
+            self.findings.note("no_table_in_sheet", message, sheet=sheet.name, remedy="Nothing to do if it holds none.")
+
+    def _name_wells(self, sheet: Sheet, facts: Facts, mapping: Mapping, prepared: PreparedTable) -> None:
+        """Note the well of each row of rock: of its own cell, else one name for the whole table."""
+        column = mapping.one("WELL") or mapping.one("UWI")
+        rock = [row for row in prepared.rows if row.kept and row.role in {"sample", "duplicate"}]
+        if column is None:
+            well = self._one_well(sheet, facts)
+            for row in rock:
+                row.well = well
+            self.named += [(row, sheet.name, "") for row in rock[:1]]
+            return
+        if self.request.well:
+            self._option_unused(sheet, column)
+        for row in rock:
+            cell = address(row.line - 1, column.index)
+            if row.well == ("", ""):
+                message = f"Row {row.line} names no well."
+                remedy = f"Fill column {column.letter}."
+                self.findings.error("row_without_well", message, sheet=sheet.name, cell=cell, remedy=remedy)
+            else:
+                self.named.append((row, sheet.name, cell))
+
+    def _option_unused(self, sheet: Sheet, column: Column) -> None:
+        self.findings.warning(
+            "well_option_unused",
+            f"The file names its wells in column {column.letter}; «{self.request.well}» was not used.",
+            sheet=sheet.name,
+            cell=column.letter,
+            value=self.request.well,
+            remedy="Leave the well away for this file.",
+        )
+
+    def _one_well(self, sheet: Sheet, facts: Facts) -> tuple[str, str]:
+        """(name, uwi) of a table without a well column: as asked for, as the title or sheet says, else asked."""
+        if self.request.well:
+            return self.request.well, ""
+        for said in (facts, self.whole):
+            if said.well or said.uwi:
+                return said.well, said.uwi
+        if sheet.name and len(self.directory.find(sheet.name, "")) == 1:
+            message = f"The well is taken from the sheet's name «{sheet.name}»."
+            self.findings.note("well_from_sheet_name", message, sheet=sheet.name, remedy="Nothing to do if it is.")
+            return sheet.name, ""
+        if any(finding.id == "well" for finding in self.findings.found):
+            return "", ""
+        known = sorted({well.name for well in self.directory.wells.values()})
+        message = f"«{self.request.name}» names no well."
+        remedy = "Name the well (--well, or the answer «well»)."
+        answer = self.findings.ask("well", "well_missing", message, known, free=True, sheet=sheet.name, remedy=remedy)
+        return answer or "", ""
+
+
+def _no_table(name: str, layouts: list[tuple[Sheet, Layout]], findings: Findings) -> None:
+    seen = next((line for _, layout in layouts for line in layout.title), [])
+    shown = " | ".join(seen)[:200]
+    findings.error(
+        "no_table",
+        f"No table of results was found in «{name}»; its first line reads «{shown}».",
+        sheet=layouts[0][0].name,
+        cell="A1",
+        value=shown,
+        remedy="A table needs a header row that names a sample or depth and at least one analyte, "
+        "such as Depth (m), TOC (wt%), S2 (mg/g).",
+    )
+
+
+def _take_table(table: Table, facts: Facts, findings: Findings) -> tuple[PreparedTable, Mapping]:
+    """One table read whole: identity of rows, units, values."""
+    mapping = map_columns(table, findings)
+    comma = decimal_comma(table, mapping, findings)
+    raw = {column.index: table.cells(column.index) for column in mapping.results}
+    read = {
+        column.index: read_column(table.sheet, column, table.rows, raw[column.index], comma=comma)
+        for column in mapping.results
+    }
+    _place_columns(table, mapping, findings)
+    rows = RowReader(table, mapping, facts, findings, comma, _filled(table, read)).read()
+    kept = [row.kept for row in rows]
+    for cells in read.values():
+        cells.keep(kept)
+    choose_units(table, mapping, read, findings)
+    settled = {
+        column.index: Teller(table, column, findings, facts.nd).settle(read[column.index], raw[column.index], kept)
+        for column in mapping.results
+    }
+    return PreparedTable(table.sheet.name, table.cell_range, mapping.columns, mapping.unmapped, rows, settled), mapping
+
+
+def _filled(table: Table, read: dict[int, Cells]) -> list[bool]:
+    """Which data rows hold anything in a result column."""
+    filled = [False] * len(table.rows)
+    for cells in read.values():
+        for at, reading in enumerate(cells.readings):
+            if reading.state != values.BLANK:
+                filled[at] = True
+    return filled
+
+
+def _place_columns(table: Table, mapping: Mapping, findings: Findings) -> None:
+    """A table needs a column that says which sample a row is of."""
+    if not any(mapping.one(code) for code in ("SAMPLE", "TOP", "BASE")):
+        headers = ", ".join(f"«{head.text}»" for head in table.heads[:8])
+        findings.error(
+            "no_sample_column",
+            f"The table at {table.cell_range} has neither a sample nor a depth column; its headers are {headers}.",
+            sheet=table.sheet.name,
+            cell=address(table.top, table.heads[0].index),
+            value=headers,
+            remedy="Head one column Sample or Depth.",
+        )
+
+
+def count_samples(made: Prepared) -> dict[str, int]:
+    """How many of the file's samples are new and how many are held already; for a look before storing."""
+    directory = SampleDirectory({plan.pk for plan in made.wells.values() if plan.pk})
+    new, matched = set(), set()
+    for table in made.tables:
+        for row in table.rows:
+            plan = made.wells.get(row.well)
+            if not row.kept or plan is None or row.role not in {"sample", "duplicate"}:
+                continue
+            found = directory.find(plan.pk, row) if plan.pk else None
+            if found:
+                matched.add(found)
+            else:
+                new.add((id(plan), row.match_key))
+    return {"samples_new": len(new), "samples_matched": len(matched)}

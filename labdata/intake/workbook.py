@@ -1,0 +1,209 @@
+"""A laboratory file as sheets of cells, whatever its kind. What it is, its bytes tell; its name does not matter."""
+
+import io
+import re
+import zipfile
+from dataclasses import dataclass, field
+from datetime import date, datetime, time, timedelta
+from typing import Any
+
+from python_calamine import CalamineError, CalamineWorkbook, SheetVisibleEnum
+
+from labdata.intake import sheetxml, textfile
+from labdata.intake.errors import UnreadableFile
+from labdata.intake.values import number_text
+
+MAX_BYTES = 200 * 1024 * 1024
+MAX_UNPACKED = 1024 * 1024 * 1024
+MAX_RATIO = 300
+MAX_CELLS = 40_000_000
+
+Cell = Any  # str, float, int, bool, date, datetime, time, timedelta; "" when empty
+
+_OLE = b"\xd0\xcf\x11\xe0\xa1\xb1\x1a\xe1"
+_OTHER_KINDS = (
+    (b"%PDF", "a PDF"), (b"\x89PNG", "a picture"), (b"\xff\xd8\xff", "a picture"), (b"GIF8", "a picture"),
+    (b"PAR1", "a Parquet file"), (b"\x1f\x8b", "a gzip archive"), (b"7z\xbc\xaf", "a 7z archive"), (b"Rar!", "a RAR archive"),
+    (b"SQLite format 3", "a database"), (b"{\\rtf", "a word-processor file"),
+)  # fmt: skip
+
+
+@dataclass
+class Sheet:
+    """One sheet. ``rows[i][j]`` is the cell in row i + 1 and column j + 1.
+
+    ``merged``: inclusive (top, left, bottom, right) from 0; ``formats``: column -> most decimals that its number
+    formats show; ``percent``: columns shown as percent; ``faults``: address -> spreadsheet error or unstored formula.
+    """
+
+    name: str
+    rows: list[list[Cell]]
+    merged: list[tuple[int, int, int, int]] = field(default_factory=list)
+    formats: dict[int, int] = field(default_factory=dict)
+    percent: set[int] = field(default_factory=set)
+    faults: dict[tuple[int, int], str] = field(default_factory=dict)
+    comma_hint: str = ""
+
+
+@dataclass
+class Workbook:
+    """A file's visible sheets, and the names of those that are hidden."""
+
+    kind: str
+    sheets: list[Sheet]
+    hidden: list[str] = field(default_factory=list)
+
+
+def letters(index: int) -> str:
+    """Column letters of a column counted from 0: 0 is A, 26 is AA."""
+    name = ""
+    number = index + 1
+    while number:
+        number, rest = divmod(number - 1, 26)
+        name = chr(65 + rest) + name
+    return name
+
+
+def address(row: int, column: int) -> str:
+    """``F17`` for row and column counted from 0."""
+    return f"{letters(column)}{row + 1}"
+
+
+def cell_text(cell: Cell) -> str:
+    """A cell as reported, as text."""
+    if isinstance(cell, str):
+        return cell.strip()
+    if isinstance(cell, bool):
+        return "TRUE" if cell else "FALSE"
+    if isinstance(cell, (int, float)):
+        return number_text(float(cell))
+    if isinstance(cell, datetime):
+        return cell.isoformat(sep=" ", timespec="minutes")
+    if isinstance(cell, (date, time)):
+        return cell.isoformat()
+    return str(cell) if isinstance(cell, timedelta) else ""
+
+
+def read(name: str, content: bytes) -> Workbook:
+    """Every sheet of the file. Raises UnreadableFile naming the file and what is wrong with it."""
+    _refuse_hopeless(name, content)
+    if content.startswith(b"PK"):
+        return _zipped(name, content)
+    if content.startswith(_OLE):
+        return _calamine(name, content, "xls")
+    if content.lstrip()[:5].lower() in {b"<?xml", b"<html", b"<!doc", b"<tabl"}:
+        raise UnreadableFile(
+            f"«{name}» is a web page or XML, whatever its name says.", remedy="Save it as .xlsx or .csv.", file=name
+        )
+    rows, delimiter = textfile.read_rows(name, content)
+    if re.match(r"\s*~V", content[:2000].decode("latin-1").split("\n", 1)[0], re.I):
+        raise UnreadableFile(
+            f"«{name}» is a well log (LAS), not a table of samples.",
+            remedy="Send the laboratory's table of samples and values.",
+            file=name,
+        )
+    if not any(cell.strip() for row in rows for cell in row):
+        raise UnreadableFile(f"«{name}» holds nothing but blanks.", remedy="Send the file again.", file=name)
+    return Workbook("text", [Sheet("", rows, comma_hint="decimal" if delimiter == ";" else "")])
+
+
+def _refuse_hopeless(name: str, content: bytes) -> None:
+    if not content:
+        raise UnreadableFile(f"«{name}» is empty (0 bytes).", remedy="Send the file again.", file=name)
+    if len(content) > MAX_BYTES:
+        raise UnreadableFile(
+            f"«{name}» has {len(content) / 1e6:.0f} MB; {MAX_BYTES / 1e6:.0f} MB is the most that is read.",
+            remedy="Split it into several files.",
+            file=name,
+        )
+    for start, kind in _OTHER_KINDS:
+        if content.startswith(start):
+            raise UnreadableFile(
+                f"«{name}» is {kind}, not a table.",
+                remedy="Send the table itself as .xlsx, .xls, .ods, .csv, .tsv or .txt.",
+                file=name,
+            )
+
+
+def _zipped(name: str, content: bytes) -> Workbook:
+    try:
+        archive = zipfile.ZipFile(io.BytesIO(content))
+    except zipfile.BadZipFile:
+        raise UnreadableFile(
+            f"«{name}» is a damaged or incomplete workbook.", remedy="Send the file again.", file=name
+        ) from None
+    with archive:
+        entries = archive.infolist()
+        _refuse_bomb(name, content, entries)
+        names = {entry.filename for entry in entries}
+        if (
+            any(entry.flag_bits & 1 for entry in entries)
+            or "EncryptedPackage" in names
+            or _encrypted_ods(archive, names)
+        ):
+            raise _encrypted(name)
+        if not ({"xl/workbook.xml", "xl/workbook.bin", "content.xml"} & names):
+            raise UnreadableFile(
+                f"«{name}» is a zip archive, not a workbook.", remedy="Unpack it and send the tables in it.", file=name
+            )
+        book = _calamine(name, content, "ods" if "content.xml" in names else "xlsx")
+        if "xl/workbook.xml" in names:
+            sheetxml.add_formats(archive, book.sheets)
+    return book
+
+
+def _refuse_bomb(name: str, content: bytes, entries: list[zipfile.ZipInfo]) -> None:
+    unpacked = sum(entry.file_size for entry in entries)
+    if unpacked > MAX_UNPACKED or (unpacked > 50_000_000 and unpacked > MAX_RATIO * len(content)):
+        raise UnreadableFile(
+            f"«{name}» would unpack to {unpacked / 1e6:.0f} MB from {len(content) / 1e6:.2f} MB; it is not read.",
+            remedy="Save the workbook again with only its used cells, or send it as .csv.",
+            file=name,
+        )
+
+
+def _encrypted_ods(archive: zipfile.ZipFile, names: set[str]) -> bool:
+    manifest = "META-INF/manifest.xml"
+    return manifest in names and b"encryption-data" in archive.read(manifest)
+
+
+def _encrypted(name: str) -> UnreadableFile:
+    return UnreadableFile(
+        f"«{name}» is protected with a password.", remedy="Save it without a password and send it again.", file=name
+    )
+
+
+def _calamine(name: str, content: bytes, kind: str) -> Workbook:
+    if kind == "xls" and (
+        "EncryptedPackage".encode("utf-16-le") in content or "EncryptionInfo".encode("utf-16-le") in content
+    ):
+        raise _encrypted(name)
+    try:
+        book = CalamineWorkbook.from_filelike(io.BytesIO(content))
+        return _sheets(name, book, kind)
+    except (CalamineError, OSError, ValueError) as trouble:
+        if "password" in str(trouble).lower() or "encrypt" in str(trouble).lower():
+            raise _encrypted(name) from trouble
+        raise UnreadableFile(
+            f"«{name}» is a damaged or incomplete workbook ({trouble}).", remedy="Send the file again.", file=name
+        ) from trouble
+
+
+def _sheets(name: str, book: CalamineWorkbook, kind: str) -> Workbook:
+    made, hidden = [], []
+    for meta in book.sheets_metadata:
+        if meta.visible != SheetVisibleEnum.Visible:
+            hidden.append(meta.name)
+            continue
+        sheet = book.get_sheet_by_name(meta.name)
+        if sheet.total_height * sheet.total_width > MAX_CELLS:
+            raise UnreadableFile(
+                f"Sheet «{meta.name}» of «{name}» spans {sheet.total_height} rows and {sheet.total_width} columns.",
+                remedy="Delete the rows and columns outside the table and save it again.",
+                file=name,
+            )
+        merged = [(top, left, bottom, right) for (top, left), (bottom, right) in sheet.merged_cell_ranges or []]
+        made.append(Sheet(meta.name, sheet.to_python(skip_empty_area=False), merged))
+    if not any(sheet.rows for sheet in made):
+        raise UnreadableFile(f"No visible sheet of «{name}» holds anything.", remedy="Send the file again.", file=name)
+    return Workbook(kind, made, hidden)
