@@ -1,21 +1,22 @@
 """SIGKILL at random moments: no job is lost and none is applied twice, on every broker and database."""
 
 import os
+import re
 import signal
 import time
 
 import pytest
 
+from tests.jobs.conftest import prepare
 from tests.jobs.fleet import Fleet, kill_at_random
 from tests.setup import servers
 
-JOBS, SECONDS = 50, 0.25
-
-
-def prepared(fleet):
-    fleet.manage("migrate", "--verbosity=0")
-    fleet.manage("shell", "--no-imports", "--command=from tests.jobs.probes import make_table; make_table()")
-    return fleet
+JOBS, SECONDS = 40, 0.25
+QUEUE_BAD_JOBS = """
+from labdata.jobs import enqueue
+for kind, params in (("die", {}), ("hang", {"seconds": 60, "hangs": 9}), ("probe", {})):
+    enqueue(kind, params, project=None, user=None)
+"""
 
 
 def assert_each_applied_once(fleet, count):
@@ -38,7 +39,7 @@ def kill_workers_while_jobs_run(fleet, *, seed):
     enqueuer = fleet.python("-m", "tests.jobs.enqueuer", str(count), str(SECONDS))
     workers = [fleet.worker(), fleet.worker()]
     until_begun(fleet)
-    kill_at_random(fleet, workers, fleet.worker, seed=seed, kills=6, first=0.3, between=(0.7, 1.8))
+    kill_at_random(fleet, workers, fleet.worker, seed=seed, kills=5, first=0.3, between=(0.7, 1.8))
     assert enqueuer.wait(60) == 0, fleet.log()
     fleet.settle(90, count)
     assert killed_while_working(fleet) > 0, "no kill met a running job; the test proved nothing"
@@ -53,70 +54,80 @@ def until_begun(fleet, seconds=60):
         time.sleep(0.1)
 
 
-def test_workers_killed_embedded(tmp_path):
-    with Fleet(tmp_path) as fleet:
-        kill_workers_while_jobs_run(prepared(fleet), seed=7)
+def test_workers_killed_embedded(fleet):
+    kill_workers_while_jobs_run(fleet, seed=7)
 
 
-def test_the_process_that_asks_for_work_killed(tmp_path):
-    with Fleet(tmp_path) as fleet:
-        prepared(fleet)
-        fleet.worker()
+def test_the_process_that_asks_for_work_killed(fleet):
+    fleet.worker()
 
-        def start():
-            return fleet.python("-m", "tests.jobs.enqueuer", str(JOBS), "0.02")
+    def start():
+        return fleet.python("-m", "tests.jobs.enqueuer", str(JOBS), "0.02")
 
-        asking = [start()]
-        latest = time.monotonic() + 60
-        while not fleet.states().total():
-            assert time.monotonic() < latest, fleet.log()
-            time.sleep(0.05)
-        kill_at_random(fleet, asking, start, seed=11, kills=4, first=0.2, between=(1.2, 1.8))
-        assert asking[0].wait(60) == 0, fleet.log()
-        fleet.settle(90, JOBS)
-        assert_each_applied_once(fleet, JOBS)
+    asking = [start()]
+    latest = time.monotonic() + 60
+    while not fleet.states().total():
+        assert time.monotonic() < latest, fleet.log()
+        time.sleep(0.05)
+    kill_at_random(fleet, asking, start, seed=11, kills=4, first=0.2, between=(1.2, 1.8))
+    assert asking[0].wait(60) == 0, fleet.log()
+    fleet.settle(90, JOBS)
+    assert_each_applied_once(fleet, JOBS)
 
 
-def test_a_worker_that_wakes_up_too_late_writes_nothing(tmp_path):
+def test_a_worker_that_wakes_up_too_late_writes_nothing(fleet):
     """Stopped in mid-job until another has done its work, then woken."""
-    with Fleet(tmp_path) as fleet:
-        prepared(fleet)
-        first = fleet.worker()
-        fleet.python("-m", "tests.jobs.enqueuer", "1", "1.5").wait(60)
-        wait_for(fleet, "running", 30)
-        os.killpg(first.pid, signal.SIGSTOP)
-        fleet.worker()
-        fleet.settle(60, 1)
-        os.killpg(first.pid, signal.SIGCONT)
-        time.sleep(2.5)
-        assert fleet.rows("SELECT attempt FROM labdata_job") == [(2,)]
-        assert_each_applied_once(fleet, 1)
+    first = fleet.worker()
+    fleet.python("-m", "tests.jobs.enqueuer", "1", "1.5").wait(60)
+    wait_for(fleet, "running", 30)
+    os.killpg(first.pid, signal.SIGSTOP)
+    fleet.worker()
+    fleet.settle(60, 1)
+    os.killpg(first.pid, signal.SIGCONT)
+    time.sleep(2.5)
+    assert fleet.rows("SELECT attempt FROM labdata_job") == [(2,)]
+    assert_each_applied_once(fleet, 1)
 
 
-def test_a_lost_broker_file_loses_no_job(tmp_path):
-    with Fleet(tmp_path) as fleet:
-        prepared(fleet)
-        fleet.python("-m", "tests.jobs.enqueuer", "10", "0.02").wait(60)
-        for part in tmp_path.glob("broker.sqlite3*"):
-            part.unlink()
-        fleet.manage("shell", "--no-imports", "--command=from labdata.jobs.sweeper import republish_all as r; r()")
-        fleet.worker()
-        fleet.settle(60, 10)
-        assert_each_applied_once(fleet, 10)
+def test_a_lost_broker_file_loses_no_job(fleet):
+    fleet.python("-m", "tests.jobs.enqueuer", "10", "0.02").wait(60)
+    for part in fleet.home.glob("broker.sqlite3*"):
+        part.unlink()
+    fleet.manage("shell", "--no-imports", "--command=from labdata.jobs.sweeper import republish_all as r; r()")
+    fleet.worker()
+    fleet.settle(60, 10)
+    assert_each_applied_once(fleet, 10)
+
+
+def test_poison_and_hanging_jobs_end_with_a_reason(fleet):
+    """A job that kills its workers, and one that hangs: the service goes on, and both say what happened."""
+    fleet.manage("shell", "--no-imports", f"--command={QUEUE_BAD_JOBS}")
+    workers = [fleet.worker(), fleet.worker()]
+    latest = time.monotonic() + 60
+    while fleet.unsettled():
+        assert time.monotonic() < latest, fleet.log()
+        workers = [fleet.worker() if worker.poll() is not None else worker for worker in workers]
+        time.sleep(0.2)
+    told = dict(fleet.rows("SELECT kind, error_message FROM labdata_job"))
+    assert re.fullmatch(
+        r"Tried 2 times; the last time the worker \(.+:\d+\) died at step «reading sheet 3»\.", told["die"]
+    )
+    assert re.fullmatch(r"Tried 2 times; the last time no progress for \d s at step «before the hang»\.", told["hang"])
+    assert fleet.states() == {"failed": 2, "succeeded": 1}
 
 
 @pytest.mark.services
 def test_workers_killed_on_postgresql_and_redis(tmp_path, postgresql_url, redis_url):
     database = servers.create_database(postgresql_url, f"redis_{os.getpid()}")
     with Fleet(tmp_path, database_url=database, broker_url=redis_url) as fleet:
-        kill_workers_while_jobs_run(prepared(fleet), seed=13)
+        kill_workers_while_jobs_run(prepare(fleet), seed=13)
 
 
 @pytest.mark.services
 def test_workers_killed_on_postgresql_and_rabbitmq(tmp_path, postgresql_url, rabbitmq_url):
     database = servers.create_database(postgresql_url, f"rabbitmq_{os.getpid()}")
     with Fleet(tmp_path, database_url=database, broker_url=rabbitmq_url) as fleet:
-        kill_workers_while_jobs_run(prepared(fleet), seed=17)
+        kill_workers_while_jobs_run(prepare(fleet), seed=17)
 
 
 def wait_for(fleet, state, seconds):
