@@ -81,10 +81,9 @@ def release_withdraw(request: HttpRequest, slug: str, number: int) -> HttpRespon
     at_hand = _release(request, project, number)
     form = WithdrawForm(request.POST)
     if form.is_valid():
-        reason = form.cleaned_data["reason"]
-        if attempt(form, lambda: withdraw(release=at_hand, user=person(request), reason=reason)):
-            messages.success(request, f"Release {number} is withdrawn.")
-            return redirect("release", slug, number)
+        withdraw(release=at_hand, user=person(request), reason=form.cleaned_data["reason"])
+        messages.success(request, f"Release {number} is withdrawn.")
+        return redirect("release", slug, number)
     return _page(request, at_hand, form)
 
 

@@ -43,8 +43,8 @@ class UploadForm(forms.Form):
 def uploads(request: HttpRequest, slug: str) -> HttpResponse:
     """The list, newest first, by outcome if asked; the form for those who may bring files in."""
     project = open_project(request, slug, Action.UPLOAD if request.method == "POST" else Action.VIEW)
-    form = UploadForm(request.POST or None, request.FILES or None)
-    if request.method == "POST" and form.is_valid():
+    form = UploadForm(request.POST, request.FILES) if request.method == "POST" else UploadForm()
+    if form.is_valid():
         received = _receive_all(request, project, form)
         if len(received) == 1:
             return redirect("upload", slug, received[0].pk)

@@ -12,6 +12,7 @@ from django.shortcuts import redirect, render
 from django.views.decorators.http import require_http_methods, require_POST, require_safe
 
 from labdata.access import Action, visible
+from labdata.errors import NotFound
 from labdata.models import Analysis, Project, Report, Sample, Well
 from labdata.pages.common import attempt, find, open_project, page_of, person
 from labdata.registry.edits import ALONG, HEADER, add_along, edit_well, remove_along
@@ -135,6 +136,8 @@ def _desk(at_hand: Well, form: forms.Form, kind: str = "", sent: forms.Form | No
 
 
 def _along_form(kind: str) -> type[forms.ModelForm]:  # type: ignore[type-arg]
+    if kind not in ALONG:
+        raise NotFound(f"«{kind}» is nothing recorded along a well.", remedy=f"Kinds: {', '.join(ALONG)}.")
     fields = [f.name for f in ALONG[kind]._meta.concrete_fields if f.name not in {"id", "well", "name_key"}]
     return modelform_factory(ALONG[kind], fields=fields, labels=LABELS)
 

@@ -59,17 +59,35 @@ def figure(number: Any) -> str:
     return f"{number:.6g}"
 
 
+#: Parts of a flag's evidence that the page shows in a form of their own.
+SHOWN_APART = {"rule", "version", "inputs", "parameters", "neighbours"}
+
+
 @register.filter
 def evidence(facts: Any) -> list[tuple[str, str]]:
-    """The evidence of a flag as pairs of words."""
+    """What a flag, a job or an audit entry says, as pairs of words; parts shown apart and empty ones left out."""
     if not isinstance(facts, dict):
         return []
-    return [(str(key).replace("_", " "), _plain(item)) for key, item in facts.items()]
+    told = [(key, item) for key, item in facts.items() if key not in SHOWN_APART and item not in (None, "", [], {})]
+    return [(str(key).replace("_", " "), _plain(item)) for key, item in told]
+
+
+@register.filter
+def columns(rows: list[dict[str, Any]]) -> list[str]:
+    """Every key of the rows, in the order of their first appearance."""
+    return list(dict.fromkeys(key for row in rows for key in row))
+
+
+@register.filter
+def grid(rows: list[dict[str, Any]]) -> list[list[str]]:
+    """The rows as text, a cell for each of their ``columns``."""
+    names = columns(rows)
+    return [[figure(row[name]) if name in row else "" for name in names] for row in rows]
 
 
 def _plain(item: Any) -> str:
     if isinstance(item, dict):
-        return ", ".join(f"{key} {_plain(part)}" for key, part in item.items())
+        return ", ".join(f"{str(key).replace('_', ' ')} {_plain(part)}" for key, part in item.items())
     if isinstance(item, list | tuple):
         return ", ".join(_plain(part) for part in item)
     return figure(item)

@@ -8,7 +8,7 @@ from django.urls import URLPattern, URLResolver, get_resolver, reverse
 from labdata.access import GRANTS, Action
 from labdata.models import Role
 from tests.factories import UserFactory
-from tests.pages.world import World, world
+from tests.pages.world import World
 
 pytestmark = pytest.mark.django_db
 
@@ -80,11 +80,6 @@ def names_in(patterns) -> set[str]:
 def test_every_page_is_in_the_table():
     own = {name for name in names_in(get_resolver().url_patterns) if not str(name).startswith(OTHER_ROOMS)}
     assert own == PAGES.keys() | ELSEWHERE
-
-
-@pytest.fixture
-def made() -> World:
-    return world()
 
 
 def address(name: str, page: Page, made: World) -> str:

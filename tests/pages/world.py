@@ -182,5 +182,6 @@ def _release(scene: Scene) -> Release:
             manifest_sha256=manifests.sha256_of(manifest), data_sha256=sha256, analysis_count=6, result_count=15,
             stored_as=parquet.keep(f"releases/{sha256}.parquet", content), created_at=timezone.now() - timedelta(hours=1),
         )  # fmt: skip
+        made.sign_offs.set(scene.sets[0].sign_offs.all())
         audit.record("release.made", made, actor=user, project=scene.project, after={"number": 1})
     return made
