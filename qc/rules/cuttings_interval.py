@@ -6,28 +6,36 @@ from qc.rules.rule import CANNOT_EVALUATE, NOT_APPLICABLE, WARN, Answer, Finding
 from qc.rules.table import Table
 
 
-def check(table: Table, *, length_ratio: float, overlap_max: float, samples_min: int) -> Answer:
-    """One check for each cuttings interval: its own length, and its distance from the one above."""
+def check(table: Table, *, length_ratio: float, overlap_max: float, samples_min: int, share_min: float) -> Answer:
+    """One check for each cuttings interval: its own length, and its distance from the one above.
+
+    Laboratories are sent selected samples: where fewer than ``share_min`` of a well's intervals are of one length there
+    is no usual one, and where fewer adjoin each other a gap means nothing.
+    """
     samples = table.samples()
     cuttings = samples[samples["kind"] == "cuttings"]
     other = pd.Series(NOT_APPLICABLE, index=samples.index.difference(cuttings.index), dtype=object)
     answers = [Answer(other)]
     for _, well in cuttings.groupby("well", sort=True):
-        answers.append(_well(well, length_ratio, overlap_max, samples_min))
+        answers.append(_well(well, (length_ratio, overlap_max, samples_min, share_min)))
     return merge(answers)
 
 
-def _well(cuttings: pd.DataFrame, length_ratio: float, overlap_max: float, samples_min: int) -> Answer:
+def _well(cuttings: pd.DataFrame, limits: tuple[float, float, int, float]) -> Answer:
+    length_ratio, overlap_max, samples_min, share_min = limits
     lengths = (cuttings["base_m"] - cuttings["top_m"]).where(lambda made: made > 0)
     if lengths.count() < samples_min:
         return Answer(pd.Series(CANNOT_EVALUATE, index=cuttings.index, dtype=object))
     usual = float(lengths.round(2).mode().iloc[0])
+    if (lengths.round(2) == usual).sum() < share_min * lengths.count():
+        return Answer(pd.Series(NOT_APPLICABLE, index=cuttings.index, dtype=object))
     ordered = cuttings.sort_values(["top_m", "base_m"], kind="stable")
     gap = (ordered["top_m"] - ordered["base_m"].shift(1)).reindex(cuttings.index)
     facts = pd.DataFrame({"length": lengths, "gap": gap}, index=cuttings.index)
     facts["odd"] = (lengths > length_ratio * usual + 1e-9) | (lengths < usual / length_ratio - 1e-9)
     facts["overlap"] = gap < -overlap_max * usual - 1e-9
-    facts["far"] = gap > length_ratio * usual + 1e-9
+    series = (gap <= usual).sum() >= share_min * gap.count()
+    facts["far"] = (gap > length_ratio * usual + 1e-9) & series
     outcome = judge(
         cuttings.index, applies=True, known=lengths.notna(), fires=facts[["odd", "overlap", "far"]].any(axis=1)
     )
@@ -71,6 +79,6 @@ RULE = Rule(
     formula="length > 3 L or < L/3, gap > 3 L, overlap > 1 % of L; L the well's most frequent length",
     message="The interval is not like the others",
     source="our default, no publication",
-    must_not_fire="On composites named as such.",
+    must_not_fire="On composites named as such; where the well has no usual length; on gaps between selected samples.",
     example="10 m samples; 2450-2460 and 2455-2465 overlap by 5 m, fires.",
 )

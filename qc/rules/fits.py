@@ -138,6 +138,9 @@ def bootstrap(x: Floats, y: Floats, resamples: int) -> Bootstrap:
     n = len(x)
     made = np.array([_resampled(x, y, slopes, (left, right), generator.integers(0, n, n)) for _ in range(draws)])
     made = made[np.isfinite(made).all(axis=1)]
+    if not len(made):
+        unknown = (float("nan"), float("nan"))
+        return Bootstrap(unknown, unknown, unknown, draws)
     low, high = np.percentile(made, [TAIL, 100 - TAIL], axis=0)
     ends = [(float(a), float(b)) for a, b in zip(low, high, strict=True)]
     return Bootstrap(ends[0], ends[1], ends[2], draws)

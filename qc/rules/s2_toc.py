@@ -144,7 +144,7 @@ def _drawn(made: dict[str, Any], x: Floats, y: Floats, limits: Mapping[str, floa
         "intercept_joint_medians": fits.joint_intercept(x, y, line.slope), "slopes_apart": float(apart),
     }  # fmt: skip
     unstable = not apart <= limits["instability_max"] or not line.slope > 0
-    ends = fits.bootstrap(x, y, int(limits["resamples"]))
+    ends = fits.bootstrap(x, y, int(limits["resamples"])) if line.slope > 0 else None
     return Fit(**made, line=line, unstable=unstable, checks=checks, ends=ends)
 
 

@@ -25,13 +25,15 @@ def check(table: Table, *, reversed_max: float, samples_min: int) -> Answer:
             continue
         wrong = _out_of_order(group["number"].to_numpy(dtype=float), group["top_m"].to_numpy(dtype=float))
         outcome[group.index] = PASS
-        if len(wrong) > max(1.0, reversed_max * len(group)):
+        findings_here = [_finding(group, at) for at in wrong]
+        lone_slip = len(wrong) == 1 and bool(findings_here[0].more["suggestion"])
+        if len(wrong) > reversed_max * len(group) and not lone_slip:
             outcome[group.index] = NOT_APPLICABLE
             outcome[group.index[0]] = FIRE
-            findings.append(_another_numbering(table, group, len(wrong)))
+            findings.append(_another_numbering(group, len(wrong)))
             continue
         outcome[group.index[wrong]] = FIRE
-        findings += [_finding(table, group, at) for at in wrong]
+        findings += findings_here
     return Answer(outcome, findings)
 
 
@@ -83,7 +85,7 @@ def _number(text: str) -> float | None:
     return float(text) if re.fullmatch(r"\d+(\.\d+)?", text) else None
 
 
-def _finding(table: Table, group: pd.DataFrame, at: int) -> Finding:
+def _finding(group: pd.DataFrame, at: int) -> Finding:
     row, top = int(group.index[at]), float(group["top_m"].iloc[at])
     before = float(group["top_m"].iloc[at - 1]) if at else -np.inf
     after = float(group["top_m"].iloc[at + 1]) if at + 1 < len(group) else np.inf
@@ -105,7 +107,7 @@ def _finding(table: Table, group: pd.DataFrame, at: int) -> Finding:
     return Finding(row, "", WARN, text + ".", (), top, limit, more=more)
 
 
-def _another_numbering(table: Table, group: pd.DataFrame, wrong: int) -> Finding:
+def _another_numbering(group: pd.DataFrame, wrong: int) -> Finding:
     text = f"Sample numbers «{group['prefix'].iloc[0]}…» do not follow depth ({wrong} of {len(group)} reversed): another numbering."
     more = {"alternatives": ["numbered by another order"], "discriminating_test": "ask how the samples were numbered"}
     rows = tuple(int(row) for row in group.index)
@@ -120,7 +122,7 @@ RULE = Rule(
     check=check,
     inputs=("sample label", "top"),
     flags="the sample",
-    formula="adjacent reversals of depth by sample number, at most 5 % of the rows (or a single one)",
+    formula="adjacent reversals of depth by sample number in at most 5 % of the rows, or a single one that a slip of digits explains",
     message="The depth breaks the order of sample numbers",
     source="our default, no publication",
     must_not_fire="Row by row where more than 5 % reverse: then one note says that numbering follows another order.",

@@ -58,7 +58,7 @@ def _finding(
     elif toc < toc_warn or rows.at[row, "TOC_q"] == "<":
         text = f"{index} is doubtful: TOC {shown} wt% is below {say(toc_warn)}"
     else:
-        text = f"{index} is uncertain by {100 * spread:.0f} %, more than {100 * relative_max:.0f} %"
+        text = f"{index} is uncertain by {100 * spread:.1f} %, more than {100 * relative_max:.0f} %"
     lean = toc < toc_warn
     computed, limit = (toc, toc_min if toc < toc_min else toc_warn) if lean else (spread, relative_max)
     return Finding(

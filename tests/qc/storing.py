@@ -4,7 +4,17 @@ from collections.abc import Iterable, Mapping
 from typing import Any
 
 from labdata.models import (
-    Analysis, Analyte, Method, Project, Report, Result, Sample, SourceColumn, SourceFile, SourceTable, Well,
+    Analysis,
+    Analyte,
+    Method,
+    Project,
+    Report,
+    Result,
+    Sample,
+    SourceColumn,
+    SourceFile,
+    SourceTable,
+    Well,
 )  # fmt: skip
 from qc.rules.records import read
 from qc.rules.table import ANALYTES
