@@ -73,6 +73,21 @@ class Depth(django_filters.NumberFilter):
         return None
 
 
+class YesOrNoField(forms.CharField):
+    def clean(self, value: Any) -> bool | None:
+        text = super().clean(value)
+        if text and text.lower() not in {"true", "false"}:
+            raise forms.ValidationError(f"«{text}» is neither true nor false.")
+        return text.lower() == "true" if text else None
+
+
+@extend_schema_field(OpenApiTypes.BOOL)
+class YesOrNo(django_filters.Filter):
+    """true or false."""
+
+    field_class = YesOrNoField
+
+
 class OneOf(django_filters.ChoiceFilter):
     """One of a short list, which the refusal names."""
 
@@ -189,9 +204,7 @@ class AnalysisRows(Rows):
     }  # fmt: skip
     many = frozenset({"analyte"})
     state = OneOf(ReviewSetState.values, field_name="review_item__review_set__state", label="State of its review set.")
-    superseded = django_filters.BooleanFilter(
-        method="by_superseded", label="true: replaced ones; unless told, current."
-    )
+    superseded = YesOrNo(method="by_superseded", label="true: replaced ones; unless told, current.")
 
     class Meta:
         model = Analysis

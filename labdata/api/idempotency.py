@@ -1,6 +1,7 @@
 """``Idempotency-Key``: a POST sent twice is done once, and answered alike."""
 
 import hashlib
+import json
 from collections.abc import Callable
 from functools import partial, wraps
 from typing import Any
@@ -9,6 +10,7 @@ from django.core.files.uploadedfile import UploadedFile
 from django.db import IntegrityError, transaction
 from django.utils.crypto import salted_hmac
 from rest_framework.exceptions import APIException, ValidationError
+from rest_framework.renderers import JSONRenderer
 from rest_framework.request import Request
 from rest_framework.response import Response
 
@@ -71,7 +73,8 @@ def _first(handler: Callable[[], Response], request: Request, key: str, digest: 
             held.delete()
         else:
             held.status = response.status_code
-            held.body = {"data": response.data, "location": response.headers.get("Location", "")}
+            data = json.loads(JSONRenderer().render(response.data))
+            held.body = {"data": data, "location": response.headers.get("Location", "")}
             held.save(update_fields=["status", "body"])
     if refusal is not None:
         raise refusal

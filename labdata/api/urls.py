@@ -1,5 +1,6 @@
 """Addresses of the API. Each may also be written with a slash at its end."""
 
+from django.contrib.auth.decorators import login_not_required
 from django.http import HttpRequest, HttpResponseBase, JsonResponse
 from django.urls import Resolver404, URLPattern, path, re_path, resolve
 from django.views.decorators.csrf import csrf_exempt
@@ -23,6 +24,7 @@ def _one(name: str, view: type[ReadView], pattern: str = r"(?P<pk>[0-9]{1,18})")
 
 
 @csrf_exempt
+@login_not_required
 def other(request: HttpRequest, rest: str) -> HttpResponseBase:
     """An address with a slash at its end is the one without; anything else is not there."""
     if rest.endswith("/"):

@@ -69,6 +69,7 @@ def write_csv(table: pa.Table, out: IO[bytes]) -> None:
     for place, column in enumerate(table.schema):
         if pa.types.is_string(column.type):
             table = table.set_column(place, column.name, disarmed(table.column(place)))
+    table = table.rename_columns(disarmed(pa.chunked_array([table.column_names], pa.string())).to_pylist())
     pacsv.write_csv(table, out, pacsv.WriteOptions(batch_size=BATCH))
 
 

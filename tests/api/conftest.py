@@ -4,7 +4,6 @@ import pytest
 from rest_framework.test import APIClient
 
 from labdata.models import Project
-from labdata.release.services import prepare_release, request_release
 from labdata.tokens import issue_token
 from tests.factories import PASSWORD
 from tests.release.scene import Scene, signed_scene, small_scene
@@ -36,27 +35,3 @@ def signed_in(user) -> APIClient:
     client = APIClient(enforce_csrf_checks=True)
     assert client.login(username=user.username, password=PASSWORD)
     return client
-
-
-class HandContext:
-    """A job run by hand, inside the test's own transaction."""
-
-    def __init__(self, job):
-        self.job = job
-
-    def tick(self, *args, **kwargs):
-        pass
-
-    def step(self, note, allow=0):
-        from contextlib import nullcontext  # noqa: PLC0415
-
-        return nullcontext()
-
-
-def release_of(scene: Scene, title: str = "First look"):
-    """A release made by the job's own handler, without a worker."""
-    from labdata.models import Release  # noqa: PLC0415
-
-    job = request_release(project=scene.project, user=scene.person("approver"), title=title)
-    made = prepare_release(HandContext(job))()
-    return Release.objects.get(pk=made["release"])

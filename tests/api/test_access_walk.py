@@ -2,15 +2,15 @@
 
 import pytest
 from django.urls import URLPattern
+from rest_framework.test import APIClient
 
 from labdata.api.urls import urlpatterns
 from labdata.models import Role
 from labdata.tokens import issue_token
-from rest_framework.test import APIClient
-
-from tests.api.conftest import client_of, release_of, signed_in
-from tests.factories import UserFactory
-from tests.release.scene import bare_scene, signed_scene
+from tests.api.conftest import client_of, signed_in
+from tests.api.things import one_of_everything
+from tests.factories import MembershipFactory, UserFactory
+from tests.release.scene import bare_scene, release_of, signed_scene
 
 EVERYONE = {role.value for role in Role}
 AUDITORS = {"geochemist", "approver", "administrator"}
@@ -41,10 +41,8 @@ TABLE = {
 
 
 @pytest.fixture
-def world(db, monkeypatch):
+def world(db):
     """A signed and released project with one of everything, and the addresses into it."""
-    from tests.api.things import one_of_everything  # noqa: PLC0415
-
     scene = signed_scene()
     return scene, one_of_everything(scene, release_of(scene))
 
@@ -141,8 +139,6 @@ def test_a_session_needs_a_csrf_token(world, name):
 
 def test_a_token_sees_its_own_project_only(world):
     """Though its user is a member of two."""
-    from tests.factories import MembershipFactory  # noqa: PLC0415
-
     scene, _ = world
     other = bare_scene()
     user = scene.person("geochemist")

@@ -53,7 +53,10 @@ class Things:
             "api-uploads": {"project": slug, "file": SimpleUploadedFile("late.csv", CSV), "lab": "Lab"},
             "api-upload-answers": {"answers": {"unit:Sheet1!C": "wt%"}},
             "api-qc-runs": {"project": slug, "wells": [held.well.name]},
-            "api-decisions": {"review_set": held.pk, "decisions": [{"result": self.ids["result"], "verdict": "accepted"}]},
+            "api-decisions": {
+                "review_set": held.pk,
+                "decisions": [{"result": self.ids["result"], "verdict": "accepted"}],
+            },
             "api-sign-offs": {"review_set": held.pk, "password": PASSWORD, "meaning": "reviewed"},
             "api-releases": {"project": slug, "title": "Another"},
             "api-release-withdrawal": {"reason": "Not good"},

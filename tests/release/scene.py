@@ -1,5 +1,6 @@
 """A small project for release and API tests, made through the models: two wells, pyrolysis and carbon."""
 
+from contextlib import AbstractContextManager, nullcontext
 from dataclasses import dataclass, field
 
 from django.contrib.auth.models import User
@@ -7,8 +8,10 @@ from django.contrib.auth.models import User
 from labdata.models import (
     Analysis,
     Analyte,
+    Job,
     Method,
     Project,
+    Release,
     Report,
     Result,
     Role,
@@ -19,6 +22,7 @@ from labdata.models import (
     SourceTable,
     Well,
 )
+from labdata.release.services import prepare_release, request_release
 from qc.models import ReviewItem, ReviewSet, SignOff, Verdict
 from qc.review.services import Choice, decide, sign_off
 from qc.review.standing import results_of
@@ -162,3 +166,23 @@ def signed_scene() -> Scene:
     for held in scene.sets:
         scene.sign(held)
     return scene
+
+
+class HandContext:
+    """A job run by hand, inside the test's own transaction."""
+
+    def __init__(self, job: Job) -> None:
+        self.job = job
+
+    def tick(self, *args, **kwargs) -> None:
+        pass
+
+    def step(self, note: str, allow: float = 0) -> AbstractContextManager:
+        return nullcontext()
+
+
+def release_of(scene: Scene, title: str = "First look") -> Release:
+    """A release made by the job's own handler, without a worker."""
+    job = request_release(project=scene.project, user=scene.person("approver"), title=title)
+    made = prepare_release(HandContext(job))()
+    return Release.objects.get(pk=made["release"])
