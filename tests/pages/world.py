@@ -164,7 +164,13 @@ def _run(scene: Scene, well: Well, result: Result) -> QcRun:
     Flag.objects.create(
         run=run, well=well, analysis=result.analysis, result=result, rule="s2_floor_for_tmax", family="validity",
         severity=Severity.WARN, analyte="TMAX", value=431.0, message="Tmax was read from an S2 peak below 0.2 mg/g.",
-        evidence={"s2": 0.12, "limit": 0.2, "inputs": [{"cell": "F6", "value": "0.12"}]}, source="Peters 1986",
+        evidence={
+            "rule": "s2_floor_for_tmax", "version": 1, "computed": 0.12, "limit": 0.2,
+            "parameters": {"s2_min": {"value": 0.2, "unit": "mg/g", "source": "Peters 1986"}},
+            "inputs": [{"analyte": "S2", "value": 0.12, "qualifier": "", "unit": "mg/g", "text": "0.12", "sheet": "Sheet1",
+                        "cell": "F6", "result": result.pk}],
+            "neighbours": [{"sample": "S-0", "top_m": 2000.0, "S2": "5"}, {"sample": "S-2", "top_m": 2020.0, "S2": "7"}],
+        }, source="Peters 1986",
         fingerprint="a" * 64,
     )  # fmt: skip
     return run
