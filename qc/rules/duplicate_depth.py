@@ -68,7 +68,8 @@ def _same_label(table: Table, apart: float, repeat_max: float) -> Answer:
     outcome = pd.Series(NOT_APPLICABLE, index=samples.index, dtype=object)
     findings: list[Finding] = []
     for _, well in named.groupby("well", sort=True):
-        spread = well.groupby("label")["top_m"].transform(lambda depth: depth.max() - depth.min())
+        depths = well.groupby("label")["top_m"]
+        spread = depths.transform("max") - depths.transform("min")
         outcome[well.index] = PASS
         twice = well[spread > apart]
         if len(twice) > max(2.0, repeat_max * len(well)):

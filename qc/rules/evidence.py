@@ -12,7 +12,7 @@ from qc.rules.table import UNITS, Table
 from qc.rules.thresholds import in_words
 
 NEIGHBOURS = 3  # above and below
-SAMPLES_LISTED = 40
+SAMPLES_LISTED = 20
 ROWS_SHOWN = 3
 LETTERS = 26
 

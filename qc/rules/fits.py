@@ -15,7 +15,7 @@ from qc.rules.spans import Floats
 PAIRS_IN_MEMORY = 2_000_000
 WORK = 20_000_000  # pair weights a bootstrap may touch
 RESAMPLES_MIN = 200
-POINTS_RESAMPLED = 1500  # of more, every k-th in order of x: the interval is then wider, never narrower
+POINTS_RESAMPLED = 800  # of more, every k-th in order of x: the interval is then wider, never narrower
 TAIL = 2.5  # per cent on either side of a 95 % interval
 
 
@@ -123,45 +123,59 @@ def bootstrap(x: Floats, y: Floats, resamples: int) -> Bootstrap:
     """Theil-Sen of resampled points, seeded by the points themselves: the same data give the same interval.
 
     ``x``, ``y`` sorted by (x, y). All pair slopes are sorted once; a resample weighs them by how often both points
-    were drawn. Fewer resamples are drawn for many points, so that the work stays below ``WORK``.
+    were drawn. Fewer resamples are drawn for many points, so that the work stays below ``WORK``, and they are
+    weighed in blocks of bounded size.
     """
     step = -(-len(x) // POINTS_RESAMPLED)
     x, y = x[::step], y[::step]
-    left, right = np.triu_indices(len(x), 1)
-    apart = x[left] != x[right]
-    left, right = left[apart], right[apart]
-    slopes = (y[right] - y[left]) / (x[right] - x[left])
-    order = np.argsort(slopes, kind="stable")
-    slopes, left, right = slopes[order], left[order], right[order]
+    slopes, ends = sorted_slopes(x, y)
     draws = max(min(resamples, RESAMPLES_MIN), min(resamples, WORK // max(len(slopes), 1)))
-    generator = np.random.default_rng(seed(x, y))
-    n = len(x)
-    made = np.array([_resampled(x, y, slopes, (left, right), generator.integers(0, n, n)) for _ in range(draws)])
+    drawn = np.random.default_rng(seed(x, y)).integers(0, len(x), (draws, len(x)))
+    block = max(1, PAIRS_IN_MEMORY // max(len(slopes), 1))
+    made = np.concatenate([resampled(x, y, slopes, ends, drawn[at : at + block]) for at in range(0, draws, block)])
     made = made[np.isfinite(made).all(axis=1)]
     if not len(made):
         unknown = (float("nan"), float("nan"))
         return Bootstrap(unknown, unknown, unknown, draws)
     low, high = np.percentile(made, [TAIL, 100 - TAIL], axis=0)
-    ends = [(float(a), float(b)) for a, b in zip(low, high, strict=True)]
-    return Bootstrap(ends[0], ends[1], ends[2], draws)
+    intervals = [(float(start), float(end)) for start, end in zip(low, high, strict=True)]
+    return Bootstrap(intervals[0], intervals[1], intervals[2], draws)
+
+
+def sorted_slopes(x: Floats, y: Floats) -> tuple[Floats, tuple[np.ndarray, np.ndarray]]:
+    """Slopes of all pairs with different x in rising order, and the two points of each."""
+    left, right = np.triu_indices(len(x), 1)
+    apart = x[left] != x[right]
+    left, right = left[apart], right[apart]
+    slopes = (y[right] - y[left]) / (x[right] - x[left])
+    order = np.argsort(slopes, kind="stable")
+    return slopes[order], (left[order], right[order])
+
+
+def resampled(x: Floats, y: Floats, slopes: Floats, ends: tuple[np.ndarray, np.ndarray], drawn: np.ndarray) -> Floats:
+    """Slope, intercept and crossing of each resample (a row of ``drawn``): weighted medians of the sorted slopes."""
+    if not len(slopes):
+        return np.full((len(drawn), 3), np.nan)
+    times = _times(drawn, len(x))
+    upto = times[ends[0]]
+    upto *= times[ends[1]]
+    np.cumsum(upto, axis=0, out=upto)
+    total = upto[-1]
+    middle = [np.minimum((upto <= at).sum(axis=0), len(slopes) - 1) for at in ((total - 1) // 2, total // 2)]
+    slope = np.where(total > 0, (slopes[middle[0]] + slopes[middle[1]]) / 2, np.nan)
+    intercept = np.median(y[drawn] - slope[:, None] * x[drawn], axis=1)
+    with np.errstate(invalid="ignore", divide="ignore"):
+        return np.stack([slope, intercept, -intercept / slope], axis=1)
+
+
+def _times(drawn: np.ndarray, size: int) -> np.ndarray:
+    """How often each point was drawn: a point a row, a resample a column, so that whole rows are taken together."""
+    places = drawn + size * np.arange(len(drawn))[:, None]
+    counts = np.bincount(places.ravel(), minlength=size * len(drawn)).reshape(len(drawn), size)
+    return np.ascontiguousarray(counts.T, dtype=np.int32)
 
 
 def seed(x: Floats, y: Floats) -> int:
     """A number made of the data, the same on every machine."""
     content = np.ascontiguousarray(np.stack([x, y]), dtype="<f8").tobytes()
     return int.from_bytes(hashlib.sha256(content).digest()[:8], "big")
-
-
-def _resampled(
-    x: Floats, y: Floats, slopes: Floats, ends: tuple[np.ndarray, np.ndarray], drawn: np.ndarray
-) -> tuple[float, float, float]:
-    """Slope, intercept and crossing of one resample: a weighted median of the sorted slopes."""
-    times = np.bincount(drawn, minlength=len(x))
-    upto = np.cumsum(times[ends[0]] * times[ends[1]])
-    total = int(upto[-1]) if len(upto) else 0
-    if not total:
-        return (np.nan, np.nan, np.nan)
-    middle = np.searchsorted(upto, [(total - 1) // 2, total // 2], side="right")
-    slope = float(slopes[middle].mean())
-    intercept = float(np.median(y[drawn] - slope * x[drawn]))
-    return slope, intercept, -intercept / slope if slope else np.nan

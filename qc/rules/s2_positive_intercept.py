@@ -24,9 +24,10 @@ def _outcome(fit: Fit, intercept_min: float, lower_min: float, toc_reach_max: fl
         return CANNOT_EVALUATE if fit.missing else NOT_APPLICABLE
     if fit.x.min() > toc_reach_max:
         return NOT_APPLICABLE
-    if fit.unstable or fit.ends is None:
+    if fit.unstable:
         return CANNOT_EVALUATE
-    return FIRE if fit.line.intercept > intercept_min and fit.ends.intercept[0] > lower_min else PASS
+    sure = fit.ends is not None and fit.ends.intercept[0] > lower_min
+    return FIRE if sure and fit.line.intercept > intercept_min else PASS
 
 
 def _finding(fit: Fit, table: Table, intercept_min: float) -> Finding:

@@ -29,9 +29,10 @@ def check(table: Table, **limits: float) -> Answer:
 def _outcome(fit: Fit, limits: dict[str, float]) -> str:
     if not fit.usable:
         return CANNOT_EVALUATE if fit.missing else NOT_APPLICABLE
-    if fit.unstable or fit.ends is None:
+    if fit.unstable:
         return CANNOT_EVALUATE
-    fires = fit.ends.crossing[0] > limits["toc0_lower_min"] and fit.toc0 >= limits["toc0_min"]
+    sure = fit.ends is not None and fit.ends.crossing[0] > limits["toc0_lower_min"]
+    fires = sure and fit.toc0 >= limits["toc0_min"]
     return FIRE if fires else PASS
 
 

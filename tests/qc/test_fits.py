@@ -72,12 +72,8 @@ def test_bootstrap_of_the_worked_set():
 
 def test_bootstrap_of_a_resample_is_theil_sen_of_it():
     drawn = np.array([0, 0, 2, 3, 5, 5, 5, 7, 8, 9, 10, 11])
-    order = np.argsort(
-        (Y[:, None] - Y)[np.triu_indices(12, 1)] / (X[:, None] - X)[np.triu_indices(12, 1)], kind="stable"
-    )
-    left, right = (side[order] for side in np.triu_indices(12, 1))
-    slopes = (Y[right] - Y[left]) / (X[right] - X[left])
-    slope, intercept, _ = fits._resampled(X, Y, slopes, (left, right), drawn)
+    slopes, ends = fits.sorted_slopes(X, Y)
+    slope, intercept, _ = fits.resampled(X, Y, slopes, ends, drawn[None, :])[0]
     direct = fits.theil_sen(X[drawn], Y[drawn])
     assert (slope, intercept) == pytest.approx((direct.slope, direct.intercept))
 
