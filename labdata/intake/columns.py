@@ -77,6 +77,7 @@ def map_columns(table: Table, findings: Findings) -> Mapping:
         chosen, rest = _settle(field, claims, by_field, table, findings)
         kept += chosen
         dropped += rest
+    _name_by_lab_number(kept)
     _give_methods(kept)
     _note_likeness(table, kept, findings)
     _report_unmapped(table, unknown, dropped, findings)
@@ -239,6 +240,16 @@ def _ask_which(
     )
     chosen = next((column for column in claims if column.letter == answer), first)
     return [chosen], [(column, f"{chosen.letter} is taken for {field}") for column in claims if column is not chosen]
+
+
+def _name_by_lab_number(columns: list[Column]) -> None:
+    """Where only the laboratory's number tells rows apart, it is the sample number."""
+    fields = {column.field for column in columns}
+    if not fields & {"SAMPLE", "TOP", "BASE"}:
+        for column in columns:
+            if column.field == "LAB_NO":
+                column.field, column.confidence = "SAMPLE", 0.7
+                column.reason += "; the only thing that names the sample"
 
 
 def _give_methods(columns: list[Column]) -> None:

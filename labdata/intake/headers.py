@@ -94,6 +94,7 @@ def recognise(header: str, many_elements: bool = False) -> Guess | None:
         return None
     if code := formula(text):
         return Guess(code, "", "", 0.95, f"«{header.strip()}» is the formula of {code}")
+    text = _without_formula(text)
     whole = _names().get(fold(text))
     base, unit_text, words = _split(text)
     unit = units.parse(unit_text)
@@ -115,6 +116,13 @@ def _laboratory(base: str) -> Guess | None:
         about = tuple(token.casefold() for token in tokens[:-1])
         return Guess("LAB", "", "", 0.8, f"«{base}» names who measured", about)
     return None
+
+
+def _without_formula(text: str) -> str:
+    """``PI (S1/(S1+S2))`` is ``PI``: brackets within brackets are a formula, the name stands before."""
+    before, mark, inside = text.partition("(")
+    nested = bool(mark) and "(" in inside and before.strip() != "" and fold(before) in _names()
+    return before.strip() if nested else text
 
 
 def _split(text: str) -> tuple[str, str, tuple[str, ...]]:
@@ -166,7 +174,12 @@ def _element(base: str, unit: str, many_elements: bool) -> str:
     if symbol in element_symbols() and (concentration or many_elements):
         return "" if symbol == "N" and not (concentration or many_elements) else symbol.upper()
     listed = _names().get(fold(symbol))
-    if many_elements and symbol.isupper() and symbol.capitalize() in element_symbols() and not listed:
+    if (
+        (many_elements or concentration)
+        and symbol.isupper()
+        and symbol.capitalize() in element_symbols()
+        and not listed
+    ):
         return symbol
     return ""
 

@@ -144,39 +144,62 @@ def _remedy(shown: str, near: list[str]) -> str:
     return "Register the well first, or allow new wells (--create-wells)."
 
 
-@dataclass(frozen=True)
+@dataclass
 class Held:
-    """A sample of the project, as much as matching needs."""
+    """A sample as much as matching needs; ``pk`` is None for one that the file brings, ``row`` its first row there."""
 
-    pk: int
+    pk: int | None
     kind: str
     label: str
-    key: str
     top_m: float | None
     base_m: float | None
+    row: Row | None = None
 
 
 class SampleDirectory:
-    """The samples of some wells, found again by key, or by label and depth where one side does not state the kind."""
+    """The samples of some wells. Found again by key, or where one side says less, by what both sides say.
+
+    Wells are named by any integer that tells them apart, their id where they have one.
+    """
 
     def __init__(self, wells: set[int]) -> None:
         self.by_key: dict[tuple[int, str], Held] = {}
-        self.by_place: dict[tuple[int, str, str], list[Held]] = {}
-        fields = ("well_id", "pk", "kind", "label", "match_key", "top_md_m", "base_md_m")
-        for well, *rest in Sample.objects.filter(well__in=wells).values_list(*fields):
-            held = Held(*rest)
-            self.by_key[well, held.key] = held
-            self.by_place.setdefault((well, held.label, _place(held.top_m, held.base_m)), []).append(held)
+        self.by_label: dict[tuple[int, str, str], list[Held]] = {}
+        self.by_top: dict[tuple[int, str], list[Held]] = {}
+        fields = ("well_id", "match_key", "pk", "kind", "label", "top_md_m", "base_md_m")
+        for well, key, *rest in Sample.objects.filter(well__in=wells).values_list(*fields):
+            self._add(well, key, Held(*rest))
 
-    def find(self, well: int, row: Row) -> int | None:
-        """The sample that the row speaks of, or None."""
-        held = self.by_key.get((well, row.match_key))
-        if held is not None:
-            return held.pk
-        same = self.by_place.get((well, row.label, _place(row.top_m, row.base_m)), [])
+    def _add(self, well: int, key: str, held: Held) -> None:
+        self.by_key[well, key] = held
+        self.by_label.setdefault((well, held.label, _place(held.top_m, held.base_m)), []).append(held)
+        self.by_top.setdefault((well, _place(held.top_m)), []).append(held)
+
+    def place(self, well: int, row: Row) -> Held:
+        """The sample that the row speaks of; a new one when none fits."""
+        found = self.by_key.get((well, row.match_key)) or self._alike(well, row)
+        if found is None:
+            found = Held(None, row.kind, row.label, row.top_m, row.base_m, row)
+            self._add(well, row.match_key, found)
+        return found
+
+    def _alike(self, well: int, row: Row) -> Held | None:
+        """The one sample of the same number and depth, or for a row without a number, of the same depth."""
+        same = self.by_label.get((well, row.label, _place(row.top_m, row.base_m)), [])
         fitting = [held for held in same if row.kind == "unknown" or (held.kind == "unknown" and row.label)]
-        return fitting[0].pk if len(fitting) == 1 else None
+        if not fitting and not row.label and row.top_m is not None:
+            fitting = [
+                held
+                for held in self.by_top.get((well, _place(row.top_m)), [])
+                if row.kind in {"unknown", held.kind} and row.base_m in {None, held.base_m}
+            ]
+        return fitting[0] if len(fitting) == 1 else None
 
 
-def _place(top_m: float | None, base_m: float | None) -> str:
-    return "|".join("" if depth is None else f"{depth:.3f}" for depth in (top_m, base_m))
+def _place(*depths: float | None) -> str:
+    return "|".join("" if depth is None else f"{depth:.3f}" for depth in depths)
+
+
+def fullest_first(rows: list[tuple[int, Row]]) -> list[tuple[int, Row]]:
+    """Rows that give a sample number before those that do not, so that the latter find the former."""
+    return sorted(rows, key=lambda pair: not pair[1].label)

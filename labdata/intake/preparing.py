@@ -8,7 +8,7 @@ from labdata.intake import values, workbook
 from labdata.intake.columns import Column, Mapping, map_columns
 from labdata.intake.errors import UnreadableFile
 from labdata.intake.findings import Findings
-from labdata.intake.matching import SampleDirectory, WellDirectory, WellMatcher
+from labdata.intake.matching import SampleDirectory, WellDirectory, WellMatcher, fullest_first
 from labdata.intake.prepared import Prepared, PreparedTable
 from labdata.intake.reading import Cells, Teller, decimal_comma, read_column
 from labdata.intake.rows import Row, RowReader
@@ -174,6 +174,7 @@ def _take_table(table: Table, facts: Facts, findings: Findings) -> tuple[Prepare
         for column in mapping.results
     }
     _place_columns(table, mapping, findings)
+    _no_rows(table, findings)
     rows = RowReader(table, mapping, facts, findings, comma, _filled(table, read)).read()
     kept = [row.kept for row in rows]
     for cells in read.values():
@@ -196,6 +197,17 @@ def _filled(table: Table, read: dict[int, Cells]) -> list[bool]:
     return filled
 
 
+def _no_rows(table: Table, findings: Findings) -> None:
+    if not table.rows:
+        findings.error(
+            "no_rows",
+            f"The table at {table.cell_range} has a header and no rows.",
+            sheet=table.sheet.name,
+            cell=address(table.top, table.heads[0].index),
+            remedy="Send the file with its values.",
+        )
+
+
 def _place_columns(table: Table, mapping: Mapping, findings: Findings) -> None:
     """A table needs a column that says which sample a row is of."""
     if not any(mapping.one(code) for code in ("SAMPLE", "TOP", "BASE")):
@@ -212,16 +224,14 @@ def _place_columns(table: Table, mapping: Mapping, findings: Findings) -> None:
 
 def count_samples(made: Prepared) -> dict[str, int]:
     """How many of the file's samples are new and how many are held already; for a look before storing."""
+    numbers = {id(plan): plan.pk or -at for at, plan in enumerate(made.wells.values(), start=1)}
     directory = SampleDirectory({plan.pk for plan in made.wells.values() if plan.pk})
-    new, matched = set(), set()
-    for table in made.tables:
-        for row in table.rows:
-            plan = made.wells.get(row.well)
-            if not row.kept or plan is None or row.role not in {"sample", "duplicate"}:
-                continue
-            found = directory.find(plan.pk, row) if plan.pk else None
-            if found:
-                matched.add(found)
-            else:
-                new.add((id(plan), row.match_key))
-    return {"samples_new": len(new), "samples_matched": len(matched)}
+    rock = [
+        (numbers[id(made.wells[row.well])], row)
+        for table in made.tables
+        for row in table.rows
+        if row.kept and row.well in made.wells and row.role in {"sample", "duplicate"}
+    ]
+    placed = {id(held): held for held in (directory.place(well, row) for well, row in fullest_first(rock))}
+    new = sum(1 for held in placed.values() if held.pk is None)
+    return {"samples_new": new, "samples_matched": len(placed) - new}

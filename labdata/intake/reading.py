@@ -232,7 +232,7 @@ class Teller:
         if self.told <= MAX_FINDINGS_A_COLUMN:
             self.findings.error(
                 "unreadable_value",
-                f"{self.column.field} in cell {cell} cannot be read: «{text}» {note}.",
+                f"{self.column.field} in cell {cell} cannot be read: {_quoted(text)} {note}.",
                 id=id_, sheet=self.sheet, cell=cell, value=text,
                 remedy=f"Correct the cell, or answer «{id_}» with «blank» to leave it out.",
             )  # fmt: skip
@@ -282,6 +282,10 @@ class Teller:
             f"the cell gives its own unit {what[5:]}; it was converted.",
             "Check the column's unit.",
         )
+
+
+def _quoted(text: str) -> str:
+    return "it" if text.startswith("formula ") else f"«{text}»"
 
 
 def _some(cells: list[str]) -> str:

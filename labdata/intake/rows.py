@@ -74,6 +74,7 @@ class RowReader:
             for column in self.mapping.columns
             if not column.is_result
         }
+        self.filled_lines = {index + 1: filled for index, filled in zip(self.table.rows, self.has_values, strict=True)}
         self.unknown_kinds: dict[str, str] = {}
         self.kind_default = kind_of(self.facts.kind) or "unknown"
 
@@ -245,6 +246,9 @@ class RowReader:
         """(top, base) in metres; a depth that cannot be is an error that names the cell."""
         read = values.read_depth(text, self.comma) if text else values.NO_DEPTH
         fault = self.table.sheet.faults.get((row.line - 1, column.index)) if self.table.sheet.faults else None
+        if read.state == values.UNREADABLE and not fault and not self.filled_lines[row.line]:
+            self._skip(row, f"«{text}» is no depth, and the row has no value")
+            return None, None
         if fault or read.state == values.UNREADABLE:
             self._error(
                 column,
@@ -295,6 +299,8 @@ class RowReader:
         _, kinds = self._column("KIND")
         first: dict[tuple[tuple[str, str], str], Row] = {}
         for at, row in enumerate(rows):
+            if not row.kept:
+                continue
             role = role_of(kinds[at]) if kinds else ""
             texts = self._line_texts(at)
             if not role and row.top_m is None:

@@ -88,7 +88,36 @@ def find_tables(sheet: Sheet) -> Layout:
             return Layout(tables, title)
         title += [line for r in range(row, header.top) if (line := _line(sheet, r))]
         row = _take_rows(sheet, header)
-        tables.append(header)
+        title += [[note] for note in header.notes]
+        tables += _side_by_side(header)
+
+
+def _side_by_side(table: Table) -> list[Table]:
+    """Tables that stand beside each other: a gap in the header, and right of it samples or depths of their own."""
+    groups: list[list[Head]] = []
+    for head in table.heads:
+        if groups and head.index == groups[-1][-1].index + 1:
+            groups[-1].append(head)
+        else:
+            groups.append([head])
+    parts: list[list[Head]] = []
+    for group in groups:
+        places = any(head.guess and head.guess.field in {"SAMPLE", "TOP"} for head in group)
+        if parts and not (places and _score(group)):
+            parts[-1] += group
+        else:
+            parts.append(group)
+    if len(parts) == 1 or not _score(parts[0]):
+        return [table]
+    return [_part(table, heads) for heads in parts]
+
+
+def _part(table: Table, heads: list[Head]) -> Table:
+    """The columns of one of the tables, with the rows that are filled there."""
+    part = Table(table.sheet, table.top, table.height, table.unit_row, heads, skipped=table.skipped)
+    left, right = heads[0].index, heads[-1].index + 1
+    part.rows = [row for row in table.rows if not _blank(table.sheet.rows[row][left:right])]
+    return part
 
 
 def _line(sheet: Sheet, row: int) -> list[str]:
@@ -194,7 +223,7 @@ def _heads(sheet: Sheet, top: int, height: int) -> list[Head]:
     width = max(len(sheet.rows[r]) for r in range(top, top + height))
     lines = [[_text_at(sheet, r, c) for c in range(width)] for r in range(top, top + height)]
     groups = [_filled_right(line, lines[-1]) for line in lines[:-1]]
-    many = sum(1 for text in lines[-1] if set(text.split()) & element_symbols()) >= 3
+    many = sum(1 for text in lines[-1] if _has_symbol(text)) >= 3
     heads = []
     for column in range(width):
         own = [line[column] for line in lines]
@@ -203,6 +232,14 @@ def _heads(sheet: Sheet, top: int, height: int) -> list[Head]:
             shown = " ".join(dict.fromkeys(text for text in own if text))
             heads.append(Head(column, shown, _read_head(own, group, many)))
     return heads
+
+
+def _has_symbol(text: str) -> bool:
+    """True for a header with an element symbol as a word: ``Mo ppm``, ``MO_PPM``."""
+    words = text.replace("_", " ").split()
+    return any(
+        word in element_symbols() or (word.isupper() and word.capitalize() in element_symbols()) for word in words
+    )
 
 
 def _filled_right(line: list[str], below: list[str]) -> list[str]:
@@ -222,7 +259,12 @@ def _read_head(own: list[str], group: list[str], many: bool) -> Guess | None:
     if len(own) == 1:
         return guess
     grouped = " ".join([*dict.fromkeys(text for text in group if text), last]).strip()
-    for text in (joined, grouped, *(text for text in reversed(own[:-1]) if text)):
+    alone = (
+        [text for text in reversed(own[:-1]) if text]
+        if units.parse(last.strip("()[] ")) not in {"", "count"} or not last
+        else []
+    )
+    for text in (joined, grouped, *alone):
         other = recognise(text, many)
         if (other and (guess is None or guess.field == NAME)) or (
             other and guess and other.field == guess.field and not guess.unit and other.unit

@@ -32,7 +32,10 @@ def choose_units(table: Table, mapping: Mapping, cells: dict[int, Cells], findin
             open_columns.remove(column)
     _ask_groups(table, open_columns, cells, findings)
     for column in mapping.results:
-        column.factor = units.factor(column.unit, field_types()[column.field].unit) or column.factor
+        canonical = field_types()[column.field].unit
+        column.factor = units.factor(column.unit, canonical) or column.factor
+        if column.unit and column.factor == 1:
+            column.unit = canonical  # % of a weight is wt%, mg/g of an index is mg/g TOC
 
 
 def _shown_as_percent(table: Table, mapping: Mapping, cells: dict[int, Cells]) -> None:
@@ -63,17 +66,27 @@ def _known(table: Table, column: Column, findings: Findings) -> None:
             sheet=table.sheet.name, cell=_header_cell(table, column), value=column.header, remedy="Nothing to do; tell the laboratory.",
         )  # fmt: skip
     if units.factor(column.unit, kind.unit) is None:
-        answer = _ask(
-            table,
-            column,
-            findings,
-            f"Column {column.letter} «{column.header}» is in {column.unit}, from which no factor leads to {kind.unit} of {column.field}.",
-            _options(kind.unit),
-        )
-        column.unit = answer or ""
-        column.reason += "; unit answered" if answer else "; unit not convertible"
-        if answer is None:
-            column.factor = 0.0
+        _not_convertible(table, column, findings, kind.unit)
+
+
+def _not_convertible(table: Table, column: Column, findings: Findings, canonical: str) -> None:
+    """An error, unless a person has answered which unit the numbers really have."""
+    message = f"Column {column.letter} «{column.header}» is in {column.unit}, which does not convert to {canonical}."
+    options = _options(canonical)
+    if _id(table, column) in findings.answers and (answer := _ask(table, column, findings, message, options)):
+        column.unit = answer
+        column.reason += f"; unit {answer} answered by a person"
+        return
+    findings.error(
+        "unit_not_convertible",
+        message,
+        id=_id(table, column),
+        sheet=table.sheet.name,
+        cell=_header_cell(table, column),
+        value=column.header,
+        remedy=f"Convert the column, or if its header is wrong answer «{_id(table, column)}» with {', '.join(options)}.",
+    )
+    column.factor = 0.0
 
 
 def _told_by_numbers(column: Column, mapping: Mapping, cells: dict[int, Cells]) -> bool:

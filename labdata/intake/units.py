@@ -81,9 +81,15 @@ def parse(text: str) -> str:
     ``mg HC/g rock``, ``mgHC/g-rock`` and ``kg/t`` are ``mg/g``; ``Wt. %`` is ``wt%``; ``feet`` is ``ft``.
     """
     folded = fold(text)
-    return (
-        _NAMED.get(folded, "") or _NAMED.get(folded.replace(".", ""), "") or _NAMED.get(folded.replace("per", "/"), "")
-    )
+    for spelling in (folded, folded.replace(".", ""), folded.replace("per", "/"), _bare(folded)):
+        if name := _NAMED.get(spelling):
+            return name
+    return ""
+
+
+def _bare(folded: str) -> str:
+    """``wt%hc``, ``wt%rock`` and ``%dry`` without the word that only says of what."""
+    return re.sub(r"(?<=%)(?:hc|rock|toc|corg|c|s|dry|drywt|bulk|wholerock|caco3|eq)$", "", folded)
 
 
 def factor(reported: str, canonical: str) -> float | None:

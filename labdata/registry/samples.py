@@ -2,7 +2,7 @@
 
 from collections.abc import Iterable
 
-from labdata.intake.matching import SampleDirectory
+from labdata.intake.matching import SampleDirectory, fullest_first
 from labdata.intake.rows import Row
 from labdata.models import Sample
 from labdata.registry import bulk
@@ -17,23 +17,14 @@ def place_samples(rows: Iterable[tuple[int, Row]]) -> tuple[dict[int, int], int,
     """(id(row) -> sample id, samples made, samples matched) for rows of rock, each with its well's id."""
     listed = list(rows)
     directory = SampleDirectory({well for well, _ in listed})
-    placed: dict[int, int] = {}
-    matched: set[int] = set()
-    new: dict[tuple[int, str], list[Row]] = {}
-    for well, row in listed:
-        found = directory.find(well, row)
-        if found is None:
-            new.setdefault((well, row.match_key), []).append(row)
-        else:
-            placed[id(row)] = found
-            matched.add(found)
-    ids = bulk.take_ids(Sample, len(new))
-    bulk.insert(
-        Sample, _COLUMNS, (_values(pk, well, group[0]) for pk, ((well, _), group) in zip(ids, new.items(), strict=True))
-    )
-    for pk, group in zip(ids, new.values(), strict=True):
-        placed.update({id(row): pk for row in group})
-    return placed, len(ids), len(matched)
+    placed = [(well, row, directory.place(well, row)) for well, row in fullest_first(listed)]
+    samples = {id(held): (well, held) for well, _, held in placed}
+    new = [(well, held) for well, held in samples.values() if held.pk is None]
+    for (_, held), pk in zip(new, bulk.take_ids(Sample, len(new)), strict=True):
+        held.pk = pk
+    bulk.insert(Sample, _COLUMNS, (_values(held.pk, well, held.row) for well, held in new if held.pk and held.row))
+    found = {id(row): held.pk for _, row, held in placed if held.pk}
+    return found, len(new), len(samples) - len(new)
 
 
 def _values(pk: int, well: int, row: Row) -> tuple[object, ...]:
