@@ -1,6 +1,6 @@
 """Put small reports into the registry without going through a file."""
 
-from collections.abc import Iterable, Mapping
+from collections.abc import Iterable, Mapping, Sequence
 from typing import Any
 
 from labdata.models import (
@@ -16,11 +16,10 @@ from labdata.models import (
     SourceTable,
     Well,
 )  # fmt: skip
+from qc.models import Decision, ReviewSet, Verdict
 from qc.rules.records import read
 from qc.rules.table import ANALYTES
-from tests.factories import ProjectFactory
-
-METHODS = {"RO": "reflectance", "RO_N": "reflectance", "RO_SD": "reflectance"}
+from tests.factories import ProjectFactory, UserFactory
 
 
 def store(
@@ -30,35 +29,61 @@ def store(
     number: str = "R-1",
     method: str = "pyrolysis",
     wells: Mapping[str, Mapping[str, Any]] | None = None,
-    stated_replicates: bool = False,
+    lines: Sequence[int] = (),
+    extend: bool = False,
 ) -> Project:
-    """One report with one table; a record holds well, label, kind, top_m, base_m, formation, replicate and cells."""
+    """One report with one table; a record holds well, label, kind, top_m, base_m, formation, replicate and cells.
+
+    ``lines`` says in which line of the sheet each record stands; ``extend`` adds to the report of this number.
+    """
     listed = [dict(record) for record in records]
     project = project or ProjectFactory()
-    source = SourceFile.objects.create(
-        project=project, sha256=f"{number:0>64}", name=f"{number}.csv", size=1, stored_as=number
+    table = (
+        SourceTable.objects.get(report__project=project, report__number=number)
+        if extend
+        else _table(project, number, method)
     )
-    report = Report.objects.create(project=project, source_file=source, number=number)
-    table = SourceTable.objects.create(report=report, sheet="Results", cell_range="A1:Z99", kind=method)
-    codes = [code for code in ANALYTES if any(code in record for record in listed)]
-    columns = {
-        code: SourceColumn.objects.create(
-            table=table, line=place, header=code, field=code,
-            decimals=max([cell[2] for record in listed if (cell := read(record.get(code)))], default=0),
-        )
-        for place, code in enumerate(sorted(codes), start=1)
-    }  # fmt: skip
-    if stated_replicates:
-        SourceColumn.objects.create(table=table, line=99, header="rep", field="REPLICATE")
     kind, _ = Method.objects.get_or_create(code=method, defaults={"name": method})
-    for line, record in enumerate(listed, start=2):
-        analysis = _analysis(record, project, report, table, kind, line, wells or {})
+    columns = _columns(table, listed)
+    for line, record in zip(lines or range(2, len(listed) + 2), listed, strict=True):
+        analysis = _analysis(record, table, kind, line, wells or {})
         for code, column in columns.items():
             _result(analysis, code, column, record.get(code), kind)
     return project
 
 
-def _analysis(record, project, report, table, method, line, wells) -> Analysis:  # noqa: PLR0917
+def decide(result: Result, verdict: Verdict) -> None:
+    """A person's verdict on one result, as the review desk keeps it."""
+    well = result.analysis.sample.well
+    review_set, _ = ReviewSet.objects.get_or_create(project=well.project, well=well, number=1)
+    reason = "measurement" if verdict == Verdict.REJECTED else ""
+    Decision.objects.create(
+        review_set=review_set, result=result, verdict=verdict, reason=reason, decided_by=UserFactory()
+    )
+
+
+def _table(project: Project, number: str, method: str) -> SourceTable:
+    source = SourceFile.objects.create(
+        project=project, sha256=f"{number:0>64}", name=f"{number}.csv", size=1, stored_as=number
+    )
+    report = Report.objects.create(project=project, source_file=source, number=number)
+    return SourceTable.objects.create(report=report, sheet="Results", cell_range="A1:Z99", kind=method)
+
+
+def _columns(table: SourceTable, records: list[dict[str, Any]]) -> dict[str, SourceColumn]:
+    """One column a code; decimals are the most that a cell shows."""
+    made = {}
+    for place, code in enumerate(ANALYTES, start=1):
+        seen = [cell[2] for record in records if (cell := read(record.get(code)))]
+        if seen:
+            made[code], _ = SourceColumn.objects.get_or_create(
+                table=table, line=place, defaults={"header": code, "field": code, "decimals": max(seen)}
+            )
+    return made
+
+
+def _analysis(record, table, method, line, wells) -> Analysis:
+    project, report = table.report.project, table.report
     name = record.get("well", "Quill 1")
     well, _ = Well.objects.get_or_create(
         project=project, name=name, name_key=name.casefold(), defaults=wells.get(name, {})
