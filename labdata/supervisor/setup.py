@@ -1,9 +1,11 @@
 """Making a home folder ready: schema, seeds, triggers, static files."""
 
+import hashlib
 from collections.abc import Callable
 from pathlib import Path
 
 from django.conf import settings
+from django.contrib.staticfiles.finders import get_finders
 from django.core.management import call_command
 from django.db import connection, connections
 from django.db.migrations.executor import MigrationExecutor
@@ -13,6 +15,8 @@ from labdata import backups, triggers
 from labdata.errors import Conflict
 from labdata.locks import locked
 
+STAMP = ".made-from"
+UNUSED = ("rest_framework", "drf_spectacular")  # the pages of the API's libraries, which are not served
 Say = Callable[[str], None]
 
 
@@ -24,8 +28,27 @@ def prepare_home(home: Path, say: Say) -> None:
     """
     with locked(home / "set-up.lock", wait=True):
         migrate(home, say)
-    call_command("collectstatic", interactive=False, verbosity=0)
+        collect_static(home)
     connections.close_all()
+
+
+def collect_static(home: Path) -> None:
+    """Gather, name by content and compress what browsers load, unless that was done for these very files."""
+    stamp = home / "static" / STAMP
+    sources = _static_sources()
+    if stamp.exists() and stamp.read_text(encoding="ascii") == sources:
+        return
+    call_command("collectstatic", interactive=False, verbosity=0, ignore_patterns=[*UNUSED])
+    stamp.write_text(sources, encoding="ascii")
+
+
+def _static_sources() -> str:
+    """Digest over name, size and time of every static file of the program."""
+    digest = hashlib.sha256()
+    for finder in get_finders():
+        for name, storage in finder.list([*UNUSED]):
+            digest.update(f"{name} {storage.size(name)} {storage.get_modified_time(name).isoformat()}\n".encode())
+    return digest.hexdigest()
 
 
 def prepare_schema(say: Say) -> None:

@@ -1,6 +1,7 @@
 """A copy that can be trusted: taken while others write, checked file by file, put only into an empty home."""
 
 import json
+import shutil
 import sqlite3
 import threading
 from contextlib import closing
@@ -13,59 +14,62 @@ from tests.jobs.fleet import Fleet
 
 
 @pytest.fixture(scope="module")
-def home(tmp_path_factory):
+def home(first_home, tmp_path_factory):
     """A home with an account and two files."""
-    folder = tmp_path_factory.mktemp("home")
-    with Fleet(folder, settings="labdata.settings") as fleet:
-        fleet.manage("migrate", "--verbosity=0")
-        fleet.manage(
-            "shell", "--no-imports", "--command=from labdata.accounts import first_administrator as f; f()",
-        )  # fmt: skip
+    folder = shutil.copytree(first_home, tmp_path_factory.mktemp("kept") / "home")
     (folder / "files" / "ab").mkdir(parents=True)
     (folder / "files" / "ab" / "sheet").write_bytes(b"TOC\n1.2\n")
     (folder / "files" / ".half").write_bytes(b"still being written")
     return folder
 
 
-@pytest.fixture
-def run(home):
-    def manage(command, target, *, other_home=home):
-        fleet = Fleet(other_home, settings="labdata.settings")
-        done = fleet.manage(command, str(target), "--json", check=False)
-        return done.returncode, json.loads(done.stdout)
-
-    return manage
+def run(home, *words):
+    """Exit status and JSON answer of one command on ``home``."""
+    done = Fleet(home, settings="labdata.settings").manage(*words, "--json", check=False)
+    return done.returncode, json.loads(done.stdout)
 
 
-def test_a_copy_can_be_put_back(run, home, tmp_path):
-    status, answer = run("backup", tmp_path / "copy")
+@pytest.fixture(scope="module")
+def copy(home, tmp_path_factory):
+    """A copy that the command made."""
+    target = tmp_path_factory.mktemp("copies") / "copy"
+    status, answer = run(home, "backup", str(target))
     assert (status, sorted(answer["files"])) == (0, ["files/ab/sheet", "kerogate.sqlite3"])
-    new = tmp_path / "new"
-    new.mkdir()
-    assert run("restore", tmp_path / "copy", other_home=new)[0] == 0
-    assert (new / "files/ab/sheet").read_bytes() == b"TOC\n1.2\n"
-    assert run("audit", "--verbosity=1", other_home=new)[1]["entries"] == 1
-    status, answer = run("restore", tmp_path / "copy", other_home=new)
+    return target
+
+
+def test_a_copy_can_be_put_back_into_an_empty_home_only(copy, tmp_path):
+    assert run(tmp_path, "restore", str(copy))[0] == 0
+    assert (tmp_path / "files/ab/sheet").read_bytes() == b"TOC\n1.2\n"
+    assert run(tmp_path, "audit")[1]["entries"] == 1
+    status, answer = run(tmp_path, "restore", str(copy))
     assert (status, answer["error"]["code"]) == (1, "conflict")
 
 
-@pytest.mark.parametrize("harm", ["alter", "remove", "add", "manifest"])
-def test_a_damaged_copy_is_refused(run, tmp_path, harm):
-    copy = tmp_path / "copy"
-    run("backup", copy)
-    if harm == "alter":
-        (copy / "kerogate.sqlite3").write_bytes((copy / "kerogate.sqlite3").read_bytes()[:-1] + b"x")
-    elif harm == "remove":
-        (copy / "files/ab/sheet").unlink()
-    elif harm == "add":
-        (copy / "files/ab/other").write_bytes(b"")
-    else:
-        (copy / "manifest.json").write_text("{")
+def test_a_damaged_copy_leaves_the_home_empty(copy, tmp_path):
+    damaged = shutil.copytree(copy, tmp_path / "copy")
+    (damaged / "files/ab/sheet").unlink()
     new = tmp_path / "new"
     new.mkdir()
-    status, answer = run("restore", copy, other_home=new)
+    status, answer = run(new, "restore", str(damaged))
     assert (status, answer["error"]["code"]) == (1, "backup_damaged")
     assert not (new / "kerogate.sqlite3").exists()
+
+
+@pytest.mark.parametrize("harm", ["alter", "remove", "add", "manifest"])
+def test_every_damage_is_seen(copy, tmp_path, harm):
+    damaged = shutil.copytree(copy, tmp_path / "copy")
+    backups.verify(damaged)
+    if harm == "alter":
+        (damaged / "kerogate.sqlite3").write_bytes((damaged / "kerogate.sqlite3").read_bytes()[:-1] + b"x")
+    elif harm == "remove":
+        (damaged / "files/ab/sheet").unlink()
+    elif harm == "add":
+        (damaged / "files/ab/other").write_bytes(b"")
+    else:
+        (damaged / "manifest.json").write_text("{")
+    with pytest.raises(backups.BackupDamaged):
+        backups.verify(damaged)
 
 
 def test_a_full_folder_is_not_written_to(tmp_path):

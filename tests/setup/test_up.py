@@ -59,8 +59,8 @@ class Service:
 
 
 @pytest.fixture
-def service(tmp_path):
-    started = Service(tmp_path / "home with blanks")
+def service(ready_home):
+    started = Service(ready_home)
     yield started
     started.process.kill()
     started.process.wait()
@@ -106,11 +106,11 @@ def test_children_end_with_a_supervisor_that_was_killed(service):
     wait_until(lambda: service.children() == {}, STOP_SECONDS)
 
 
-def test_a_taken_port_is_told(tmp_path):
+def test_a_taken_port_is_told(ready_home):
     with socket.socket() as other:
         other.bind(("127.0.0.1", 0))
         other.listen()
-        line = [sys.executable, "manage.py", "up", "--home", str(tmp_path), "--port", str(other.getsockname()[1])]
+        line = [sys.executable, "manage.py", "up", "--home", str(ready_home), "--port", str(other.getsockname()[1])]
         done = subprocess.run(line, cwd=CHECKOUT, capture_output=True, text=True, check=False)
     assert done.returncode == 1
     assert "cannot be used" in done.stderr
