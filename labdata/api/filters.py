@@ -10,8 +10,6 @@ from django import forms
 from django.db.models import Exists, F, OuterRef, Q, QuerySet, Subquery, Value
 from django.db.models.functions import Coalesce
 from django.utils.dateparse import parse_date, parse_datetime
-from drf_spectacular.types import OpenApiTypes
-from drf_spectacular.utils import extend_schema_field
 from rest_framework.exceptions import ValidationError
 
 from labdata.access import Action
@@ -53,8 +51,7 @@ class MomentField(forms.CharField):
         return moment if moment.tzinfo else moment.replace(tzinfo=UTC)
 
 
-@extend_schema_field(OpenApiTypes.DATETIME)
-class Moment(django_filters.Filter):
+class Moment(django_filters.IsoDateTimeFilter):
     """A time or a day."""
 
     field_class = MomentField
@@ -81,8 +78,7 @@ class YesOrNoField(forms.CharField):
         return text.lower() == "true" if text else None
 
 
-@extend_schema_field(OpenApiTypes.BOOL)
-class YesOrNo(django_filters.Filter):
+class YesOrNo(django_filters.BooleanFilter):
     """true or false."""
 
     field_class = YesOrNoField

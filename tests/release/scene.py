@@ -4,6 +4,7 @@ from contextlib import AbstractContextManager, nullcontext
 from dataclasses import dataclass, field
 
 from django.contrib.auth.models import User
+from django.db import transaction
 
 from labdata.models import (
     Analysis,
@@ -184,5 +185,7 @@ class HandContext:
 def release_of(scene: Scene, title: str = "First look") -> Release:
     """A release made by the job's own handler, without a worker."""
     job = request_release(project=scene.project, user=scene.person("approver"), title=title)
-    made = prepare_release(HandContext(job))()
+    commit = prepare_release(HandContext(job))
+    with transaction.atomic():
+        made = commit()
     return Release.objects.get(pk=made["release"])
