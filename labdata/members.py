@@ -7,8 +7,8 @@ from django.core.exceptions import ValidationError
 from django.db import transaction
 
 from labdata import audit
-from labdata.access import Action, find_user, require
-from labdata.errors import Conflict, InvalidInput, NotFound
+from labdata.access import Action, actions, find_user, require, visible_projects
+from labdata.errors import Conflict, InvalidInput, NotAllowed, NotFound
 from labdata.models import Membership, Project, Role
 
 
@@ -62,6 +62,30 @@ def create_account(
         Membership.objects.create(project=project, user=user, role=role)
         audit.record("account.created", user, actor=by, project=project, after={"user": username, "role": role})
     return user
+
+
+def set_password(*, by: User, project: Project, username: str, password: str) -> None:
+    """A new password for a member who has lost theirs.
+
+    Only where ``by`` administers every project the member belongs to: else it would open other people's projects.
+    Raises NotAllowed, NotFound (no member), InvalidInput (password).
+    """
+    require(by, project, Action.ADMINISTER)
+    user = User.objects.filter(username=username, memberships__project=project).distinct().first()
+    if user is None:
+        raise NotFound(f"{username} is no member of this project.", remedy="Load the page again.", field="username")
+    elsewhere = [one for one in visible_projects(user) if Action.ADMINISTER not in actions(by, one)]
+    if elsewhere or (user.is_staff and user != by):
+        raise NotAllowed(
+            f"{username} also has rights that you do not administer.",
+            remedy="Whoever runs the service sets this password.",
+            field="username",
+        )
+    _check_account(user, password)
+    with transaction.atomic():
+        user.set_password(password)
+        user.save(update_fields=["password"])
+        audit.record("account.password_set", user, actor=by, project=project, after={"user": username})
 
 
 def _check_role(role: str) -> None:

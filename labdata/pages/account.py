@@ -19,6 +19,10 @@ class SignInForm(AuthenticationForm):
         "inactive": "This account is closed.",
     }
 
+    def __init__(self, *args: Any, **kwargs: Any) -> None:
+        super().__init__(*args, **kwargs)
+        self.fields["username"].label = "Account name"
+
     def clean(self) -> dict[str, Any]:
         account = self.cleaned_data.get("username") or ""
         address = self.request.META.get("REMOTE_ADDR", "") if self.request else ""

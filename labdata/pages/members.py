@@ -7,7 +7,7 @@ from django.shortcuts import redirect, render
 from django.views.decorators.http import require_http_methods, require_POST
 
 from labdata.access import GRANTS, Action, visible
-from labdata.members import add_role, create_account, remove_role
+from labdata.members import add_role, create_account, remove_role, set_password
 from labdata.models import Membership, Project, Role
 from labdata.pages.common import attempt, open_project, person
 
@@ -42,6 +42,16 @@ class AccountForm(forms.Form):
     )  # fmt: skip
 
 
+class PasswordForm(forms.Form):
+    """A new password for a member who has lost theirs."""
+
+    username = forms.CharField(label="Account name", max_length=150)
+    password = forms.CharField(
+        label="New password", strip=False, widget=forms.PasswordInput(attrs={"autocomplete": "new-password"}),
+        help_text="Hand it over in person. It is for members of your own projects only.",
+    )  # fmt: skip
+
+
 @require_http_methods(["GET", "POST"])
 def members(request: HttpRequest, slug: str) -> HttpResponse:
     """Who has which role; the form that adds a role to an account."""
@@ -53,7 +63,7 @@ def members(request: HttpRequest, slug: str) -> HttpResponse:
         if added:
             messages.success(request, f"{added.user} is now {added.get_role_display()}.")
             return redirect("members", slug)
-    return _page(request, project, form, AccountForm(prefix="account"))
+    return _page(request, project, role_form=form)
 
 
 @require_POST
@@ -67,7 +77,21 @@ def member_create(request: HttpRequest, slug: str) -> HttpResponse:
         if made:
             messages.success(request, f"The account {made.username} is made. Hand over its password in person.")
             return redirect("members", slug)
-    return _page(request, project, RoleForm(prefix="role"), form)
+    return _page(request, project, account_form=form)
+
+
+@require_POST
+def member_password(request: HttpRequest, slug: str) -> HttpResponse:
+    """Set a member's password anew."""
+    project = open_project(request, slug, Action.ADMINISTER)
+    form = PasswordForm(request.POST, prefix="password")
+    if form.is_valid():
+        asked = form.cleaned_data
+        attempt(form, lambda: set_password(by=person(request), project=project, **asked))
+    if form.is_valid():
+        messages.success(request, f"{form.cleaned_data['username']} has a new password.")
+        return redirect("members", slug)
+    return _page(request, project, password_form=form)
 
 
 @require_POST
@@ -80,9 +104,14 @@ def member_remove(request: HttpRequest, slug: str) -> HttpResponse:
     return redirect("members", slug)
 
 
-def _page(request: HttpRequest, project: Project, role_form: forms.Form, account_form: forms.Form) -> HttpResponse:
+def _page(request: HttpRequest, project: Project, **sent: forms.Form) -> HttpResponse:
+    """The page with its three forms, of which the one that was sent and refused shows why."""
     rows = visible(request.user, Membership.objects.filter(project=project)).select_related("user")
     roles = [(role.label, DUTIES[role], sorted(a.replace("_", " ") for a in GRANTS[role])) for role in Role]
-    context = {"memberships": rows.order_by("user__username", "role"), "role_form": role_form,
-               "account_form": account_form, "all_roles": roles}  # fmt: skip
+    fresh = {
+        "role_form": RoleForm(prefix="role"),
+        "account_form": AccountForm(prefix="account"),
+        "password_form": PasswordForm(prefix="password"),
+    }
+    context = {"memberships": rows.order_by("user__username", "role"), "all_roles": roles, **fresh, **sent}
     return render(request, "members/members.html", context)

@@ -1,5 +1,6 @@
 """QC runs: the list, starting one, and a run with its counts and flags."""
 
+from collections import Counter, defaultdict
 from typing import Any
 
 from django import forms
@@ -13,6 +14,7 @@ from labdata.access import Action, visible
 from labdata.models import Project, Well
 from labdata.pages.common import find, open_project, page_of, person
 from qc.models import Flag, QcRun, Severity
+from qc.rules import RULES
 from qc.services import start_run
 
 OUTCOMES = ("pass", "fire", "not_applicable", "cannot_evaluate")
@@ -46,10 +48,29 @@ def qc_runs(request: HttpRequest, slug: str) -> HttpResponse:
     context = {
         "page": page_of(request, rows.order_by("-pk")),
         "wells": project.wells.all(),
-        "latest": Flag.objects.latest().filter(well__project=project).order_by("rule")
-        .values("rule", "family", "severity").annotate(n=Count("pk")).order_by("-n", "rule"),
-    }  # fmt: skip
+        "latest": _by_rule(Flag.objects.latest().filter(well__project=project)),
+        "severities": Severity.values,
+    }
     return render(request, "qc/qc_runs.html", context)
+
+
+def _by_rule(flags: QuerySet[Flag]) -> list[dict[str, Any]]:
+    """Rows of rule, family and how many flags of each severity, in the order in which rules run."""
+    counts: dict[str, Counter[str]] = defaultdict(Counter)
+    for rule_id, severity, number in flags.order_by().values_list("rule", "severity").annotate(Count("pk")):
+        counts[rule_id][severity] += number
+    order = {rule.id: rule for rule in RULES}
+    known = sorted(
+        counts, key=lambda rule_id: (list(order).index(rule_id) if rule_id in order else len(order), rule_id)
+    )
+    return [
+        {
+            "rule": rule_id,
+            "title": order[rule_id].title if rule_id in order else "",
+            "counts": [(severity, counts[rule_id][severity]) for severity in Severity.values],
+        }
+        for rule_id in known
+    ]
 
 
 @require_POST

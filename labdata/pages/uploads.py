@@ -17,18 +17,20 @@ from labdata.models import Project, SourceFile, Upload
 from labdata.pages.common import find, open_project, page_of, person
 from labdata.pages.files import FilesField
 
-LEVELS = ("error", "question", "warning", "note")
+LEVELS = ("error", "warning", "note")
+#: Counts of an answer as the page names them, in its order.
+COUNT_WORDS = {
+    "results": "results", "analyses": "analyses", "samples_new": "new samples", "samples_matched": "known samples",
+    "wells_new": "new wells", "qualified": "results with < > or ~", "blank": "blank cells", "named": "cells in findings",
+}  # fmt: skip
+LEAVE_BLANK = "cell:"  # an error about a cell may be answered with "blank"
+READ_AGAIN = (Upload.Outcome.WAITING, Upload.Outcome.REFUSED, Upload.Outcome.FAILED)
 IMPORTED = (Upload.Outcome.IMPORTED, Upload.Outcome.IMPORTED_WITH_FINDINGS)
 
 
-class UploadForm(forms.Form):
-    """Files and what the person knows about them."""
+class AgainForm(forms.Form):
+    """What the person knows about a file."""
 
-    files = FilesField(
-        label="Laboratory files",
-        help_text="Tables as the laboratory sent them: .xlsx, .xlsm, .xls, .csv, .tsv or .txt. "
-        "Drop them here or choose them; what they hold is decided by content, not by name.",
-    )
     lab = forms.CharField(label="Laboratory", max_length=160, required=False)
     well = forms.CharField(
         max_length=120, required=False, help_text="Only for a file that has no well column: the well it is about."
@@ -37,6 +39,16 @@ class UploadForm(forms.Form):
         label="Make wells that are not known yet", required=False,
         help_text="Otherwise an unknown well is an error, which catches misspelt names.",
     )  # fmt: skip
+
+
+class UploadForm(AgainForm):
+    """Files and what the person knows about them."""
+
+    files = FilesField(
+        label="Laboratory files",
+        help_text="Tables as the laboratory sent them: .xlsx, .xlsm, .xls, .csv, .tsv or .txt. "
+        "Drop them here or choose them; what they hold is decided by content, not by name.",
+    )
 
 
 @require_http_methods(["GET", "POST"])
@@ -96,17 +108,32 @@ def upload(request: HttpRequest, slug: str, pk: int) -> HttpResponse:
 
 
 def _desk(at_hand: Upload) -> dict[str, Any]:
-    findings = at_hand.answer.get("findings", [])
+    findings, counts = at_hand.answer.get("findings", []), at_hand.answer.get("counts", {})
+    amends = at_hand.report is not None and at_hand.report.supersedes_id is not None
+    busy = _busy(at_hand)
     return {
         "upload": at_hand,
         "tables": at_hand.answer.get("tables", []),
-        "counts": at_hand.answer.get("counts", {}),
-        "levels": [(level, [one for one in findings if one["level"] == level]) for level in LEVELS],
+        "counts": [(words, counts.get(name, 0)) for name, words in COUNT_WORDS.items()],
+        "levels": [(level, _grouped(findings, level)) for level in LEVELS],
         "questions": [one for one in findings if one["level"] == "question"],
-        "difference": at_hand.report.difference if at_hand.report else {},
+        "difference": at_hand.report.difference if at_hand.report and amends else {},
         "landed": at_hand.outcome in IMPORTED,
-        "busy": _busy(at_hand),
+        "busy": busy,
+        "may_read_again": not busy and at_hand.outcome in READ_AGAIN,
     }
+
+
+def _grouped(findings: list[dict[str, Any]], level: str) -> list[dict[str, Any]]:
+    """Findings of a level; those that say the same are one row with all their places."""
+    rows: dict[tuple[str, str, str], dict[str, Any]] = {}
+    for one in findings:
+        if one["level"] == level:
+            row = rows.setdefault((one["message"], one["remedy"], one["value"]), {**one, "places": []})
+            place = f"{one['sheet']}!{one['cell']}" if one["sheet"] and one["cell"] else one["sheet"] or one["cell"]
+            row["places"].append(place)
+            row["leave_blank"] = level == "error" and one["id"].startswith(LEAVE_BLANK)
+    return list(rows.values())
 
 
 def _busy(at_hand: Upload) -> bool:
@@ -128,7 +155,8 @@ def upload_progress(request: HttpRequest, slug: str, pk: int) -> HttpResponse:
 def upload_answer(request: HttpRequest, slug: str, pk: int) -> HttpResponse:
     """Take the answers given; the file is read again with them."""
     at_hand = _upload(request, open_project(request, slug, Action.UPLOAD), pk)
-    asked = [one["id"] for one in at_hand.answer.get("findings", []) if one["level"] == "question"]
+    findings = at_hand.answer.get("findings", [])
+    asked = [one["id"] for one in findings if one["level"] == "question" or one["id"].startswith(LEAVE_BLANK)]
     answers = {name: request.POST.get(f"answer:{name}", "").strip() for name in asked}
     given = {name: answer for name, answer in answers.items() if answer}
     if not given:
@@ -137,6 +165,22 @@ def upload_answer(request: HttpRequest, slug: str, pk: int) -> HttpResponse:
         answer_questions(upload=at_hand, user=person(request), answers=given)
         messages.success(request, "Thank you: the file is read again with your answers.")
     return redirect("upload", slug, pk)
+
+
+@require_POST
+def upload_again(request: HttpRequest, slug: str, pk: int) -> HttpResponse:
+    """Bring the same bytes in once more, with other particulars; the answers given so far go with them."""
+    project = open_project(request, slug, Action.UPLOAD)
+    before = _upload(request, project, pk)
+    form = AgainForm(request.POST)
+    form.full_clean()
+    with default_storage.open(before.source_file.stored_as) as stored:
+        content = stored.read()
+    made = receive(
+        project=project, name=before.file_name, content=content, user=person(request), answers=before.answers,
+        **form.cleaned_data,
+    )  # fmt: skip
+    return redirect("upload", slug, made.pk)
 
 
 @require_safe

@@ -33,6 +33,7 @@ in_project: list[URLPattern | URLResolver] = [
     path("uploads/", uploads.uploads, name="uploads"),
     path("uploads/<int:pk>/", uploads.upload, name="upload"),
     path("uploads/<int:pk>/progress/", uploads.upload_progress, name="upload_progress"),
+    path("uploads/<int:pk>/again/", uploads.upload_again, name="upload_again"),
     path("uploads/<int:pk>/answer/", uploads.upload_answer, name="upload_answer"),
     path("jobs/", jobs.jobs, name="jobs"),
     path("jobs/<uuid:pk>/", jobs.job, name="job"),
@@ -53,6 +54,7 @@ in_project: list[URLPattern | URLResolver] = [
     path("audit/", audit.audit, name="audit"),
     path("members/", members.members, name="members"),
     path("members/account/", members.member_create, name="member_create"),
+    path("members/password/", members.member_password, name="member_password"),
     path("members/remove/", members.member_remove, name="member_remove"),
 ]
 

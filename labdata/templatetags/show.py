@@ -20,9 +20,9 @@ def metres(value: float | None) -> str:
 
 
 @register.filter
-def interval(sample: Sample | None) -> str:
-    """Top and base of a sample in metres, or what there is of them."""
-    if sample is None or sample.top_md_m is None:
+def interval(sample: Any) -> str:
+    """Top and base of a sample in metres, or what there is of them; a dash where there is no sample."""
+    if not isinstance(sample, Sample) or sample.top_md_m is None:
         return "–"
     if sample.base_md_m is None or sample.base_md_m == sample.top_md_m:
         return f"{sample.top_md_m:.2f}"

@@ -38,6 +38,7 @@ PAGES = {
     "uploads": VIEW,
     "upload": Page(names=("upload",)),
     "upload_progress": Page(names=("upload",)),
+    "upload_again": Page(Action.UPLOAD, "post", ("upload",), ok=302),
     "upload_answer": Page(Action.UPLOAD, "post", ("upload",), ok=302),
     "jobs": VIEW,
     "job": Page(names=("job",)),
@@ -57,6 +58,7 @@ PAGES = {
     "audit": Page(Action.READ_AUDIT),
     "members": Page(Action.ADMINISTER),
     "member_create": Page(Action.ADMINISTER, "post"),
+    "member_password": Page(Action.ADMINISTER, "post"),
     "member_remove": Page(Action.ADMINISTER, "post", ok=404),  # nobody was named
 }
 #: Pages outside a project, or whose right is not a role's: (method, names, status by who asks)
