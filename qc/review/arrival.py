@@ -59,7 +59,8 @@ def _places(arrived: Iterable[Analysis], replaced: dict[int, int]) -> dict[int, 
         if old is not None:
             places[analysis.pk] = shared[old.pk]
             continue
-        well_id = analysis.sample.well_id  # type: ignore[union-attr] - filtered above
+        assert analysis.sample is not None, "only analyses of samples arrive here"
+        well_id = analysis.sample.well_id
         if well_id not in open_sets:
             found = _open_set(well_id)
             open_sets[well_id] = shared.setdefault(found.pk, found)

@@ -1,6 +1,7 @@
 """One change to a review set: lock it, see that nothing moved meanwhile, raise its version, leave the audit record."""
 
-from typing import Any
+from datetime import datetime
+from typing import Any, NamedTuple
 
 from labdata import audit
 from labdata.access import AnyUser
@@ -66,13 +67,23 @@ def log(
     )  # fmt: skip
 
 
-def history(review_set: ReviewSet, since_version: int = 0) -> list[AuditEntry]:
-    """Audit entries of the set after ``since_version``, oldest first."""
+class Event(NamedTuple):
+    """One change of a set in words."""
+
+    at: datetime
+    by: str
+    what: str
+    reason: str
+
+
+def history(review_set: ReviewSet, since_version: int = 0, *, latest: int) -> list[Event]:
+    """The latest changes of the set after ``since_version``, newest first."""
     entries = AuditEntry.objects.filter(object_type="reviewset", object_id=str(review_set.pk))
-    return list(entries.filter(after__version__gt=since_version).order_by("seq"))
+    newest = entries.filter(after__version__gt=since_version).order_by("-seq")
+    return [Event(*row) for row in newest.values_list("at", "actor_name", "after__what", "reason")[:latest]]
 
 
 def _meanwhile(review_set: ReviewSet, since_version: int) -> str:
     """Who did what, in words: at most the latest five changes."""
-    said = [f"{entry.actor_name} {entry.after['what']}" for entry in history(review_set, since_version)]
-    return "; ".join(said[-5:]) or f"it is at version {review_set.version}, not {since_version}"
+    said = [f"{event.by} {event.what}" for event in reversed(history(review_set, since_version, latest=5))]
+    return "; ".join(said) or f"it is at version {review_set.version}, not {since_version}"

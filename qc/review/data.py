@@ -1,6 +1,7 @@
 """What the review page draws and lists: one JSON of columns, bands, flags, fits and standing. Read only."""
 
 from collections import Counter
+from collections.abc import Iterable
 from typing import Any
 
 from django.contrib.auth.models import User
@@ -12,6 +13,7 @@ from qc.review import changes, figures, seal
 from qc.review.columns import SEVERITIES, VERDICTS, Rows, as_columns, read_rows
 from qc.review.deciding import last_batch
 from qc.review.standing import Standing, flag_answers, flags_of, results_of, standing, valid_signature
+from qc.rules import RULES
 
 HISTORY = 40
 FIT_RULE = "s2_toc_fit"
@@ -23,7 +25,8 @@ def review_data(review_set: ReviewSet, user: User) -> dict[str, Any]:
     decided = standing(results_of(review_set))
     answers = flag_answers(review_set)
     flags = list(flags_of(review_set).defer("evidence"))
-    told = [_flag(flag, rows, answers) for flag in flags]
+    wide = _of_units(flags)
+    told = [{**_flag(flag, rows, answers), "interval": _interval(wide.get(flag.pk))} for flag in flags]
     columns = as_columns(rows, decided, _severity(flags, told, rows))
     own = Decision.objects.filter(review_set=review_set, decided_by=user).exists()
     batch = last_batch(user, review_set)
@@ -39,7 +42,8 @@ def review_data(review_set: ReviewSet, user: User) -> dict[str, Any]:
         "columns": columns,
         "bands": bands(review_set.well),
         "flags": told,
-        "fits": _fits(flags),
+        "fits": _fits(wide.values()),
+        "rules": {rule.id: [rule.title, rule.tests] for rule in RULES if rule.id in {flag.rule for flag in flags}},
         "counts": _counts(rows, decided),
         "decisions": _decisions(rows, decided),
         "people": _people(decided),
@@ -86,11 +90,22 @@ def _severity(flags: list[Flag], told: list[dict[str, Any]], rows: Rows) -> dict
     return found
 
 
-def _fits(flags: list[Flag]) -> list[dict[str, Any]]:
+def _of_units(flags: list[Flag]) -> dict[int, Flag]:
+    """Flags that speak of a whole unit or interval, with their evidence."""
+    return Flag.objects.in_bulk([flag.pk for flag in flags if flag.analysis_id is None])
+
+
+def _interval(flag: Flag | None) -> list[float] | None:
+    """The depths that a flag of a unit speaks of [m]."""
+    return flag.evidence.get("interval_m") if flag else None
+
+
+def _fits(flags: Iterable[Flag]) -> list[dict[str, Any]]:
     """Lines of S2 on TOC with their interval, from the evidence of the rule that draws them."""
-    ids = [flag.pk for flag in flags if flag.rule == FIT_RULE]
     made = []
-    for flag in Flag.objects.filter(pk__in=ids):
+    for flag in flags:
+        if flag.rule != FIT_RULE:
+            continue
         fit = flag.evidence.get("fit", flag.evidence)
         if "slope" in fit and "intercept" in fit:
             unit = flag.evidence.get("unit", {})
@@ -155,8 +170,4 @@ def signature(record: SignOff | None) -> dict[str, Any] | None:
 
 def _history(review_set: ReviewSet) -> list[dict[str, Any]]:
     """The latest changes in words, newest first."""
-    entries = changes.history(review_set)[-HISTORY:]
-    return [
-        {"at": entry.at, "by": entry.actor_name, "what": (entry.after or {}).get("what", ""), "reason": entry.reason}
-        for entry in reversed(entries)
-    ]
+    return [event._asdict() for event in changes.history(review_set, latest=HISTORY)]

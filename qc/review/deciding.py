@@ -110,12 +110,12 @@ def last_batch(user: User, review_set: ReviewSet) -> UUID | None:
     entries = AuditEntry.objects.filter(
         object_type="reviewset", object_id=str(review_set.pk), actor=user, action__in=[changes.DECIDED, changes.UNDONE]
     ).order_by("-seq")
-    undone: set[str] = set()
-    for entry in entries[:200]:
-        if entry.action == changes.UNDONE:
-            undone.add(entry.after["undone"])
-        elif entry.after["batch"] not in undone:
-            return UUID(entry.after["batch"])
+    gone: set[str] = set()
+    for action, batch, undone in entries.values_list("action", "after__batch", "after__undone")[:200]:
+        if action == changes.UNDONE:
+            gone.add(undone)
+        elif batch not in gone:
+            return UUID(batch)
     return None
 
 

@@ -45,7 +45,7 @@ def review_plain(request: HttpRequest, slug: str, pk: int) -> HttpResponse:
             _apply(request, form, cast(User, request.user))
             return redirect(request.get_full_path())
         except KerogateError as refusal:
-            form.add_error(None, str(refusal))
+            form = _refused(request, find_set(request, slug, pk).version, refusal)
     results = results_of(review_set).select_related("analyte", "analysis__sample", "analysis__method")
     page = page_of(
         request, results.order_by("analysis__sample__top_md_m", "analysis", "analyte__order", "pk"), PAGE_SIZE
@@ -59,6 +59,16 @@ def review_plain(request: HttpRequest, slug: str, pk: int) -> HttpResponse:
         "rows": [(row, decided.get(row.pk), row.pk in flagged) for row in rows],
     }  # fmt: skip
     return render(request, "review/review_plain.html", context)
+
+
+def _refused(request: HttpRequest, version: int, refusal: KerogateError) -> PlainForm:
+    """The form as it was filled in, with the refusal; it now speaks of the set as the page shows it again."""
+    given = request.POST.copy()
+    given["version"] = str(version)
+    form = PlainForm(given)
+    form.is_valid()
+    form.add_error(None, str(refusal))
+    return form
 
 
 def _apply(request: HttpRequest, form: PlainForm, user: User) -> None:

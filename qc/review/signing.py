@@ -51,8 +51,10 @@ def _sign(user: User, review_set: ReviewSet, meaning: str, expected_version: int
         qc_run=QcRun.objects.filter(wells=held.well).order_by("-pk").first(),
     )  # fmt: skip
     changes.bump(held, ReviewSetState.SIGNED)
-    particulars = {"sign_off": record.pk, "content_sha256": record.content_sha256, "counts": counts, "meaning": meaning}
-    changes.log(changes.SIGNED, held, user, f"signed {counts['results']} results", **particulars)
+    changes.log(
+        changes.SIGNED, held, user, f"signed {counts['results']} results", sign_off=record.pk,
+        content_sha256=record.content_sha256, counts=counts, meaning=meaning,
+    )  # fmt: skip
     return record
 
 

@@ -46,7 +46,7 @@ def work_list(project: Project, user: User) -> list[Line]:
     deciders = _deciders(project)
     may = actions(user, project)
     lines = [
-        Line(one, counts[one.pk], flags[one.pk], signatures.get(one.pk), deciders[one.pk]) for one in sets
+        Line(one, counts[one.pk], flags.get(one.pk, {}), signatures.get(one.pk), deciders[one.pk]) for one in sets
     ]  # fmt: skip
     for line in lines:
         line.waits_for, line.for_me = _waits_for(line, user, may)
@@ -86,13 +86,14 @@ def _verdicts(project: Project) -> dict[int, dict[str, int]]:
 
 def _flags(project: Project) -> dict[int, dict[str, int]]:
     """Flags of the latest runs per set and severity."""
-    flags = Flag.objects.latest().filter(well__project=project, analysis__current=True)
-    rows = flags.order_by().values_list("analysis__review_item__review_set", "severity").annotate(Count("pk"))
-    counts: dict[int, dict[str, int]] = defaultdict(dict)
-    for review_set, severity, n in rows:
+    latest = Flag.objects.latest().filter(well__project=project).order_by()
+    own = latest.filter(analysis__current=True).values_list("analysis__review_item__review_set", "severity")
+    of_unit = latest.filter(analysis=None).values_list("well__review_sets", "severity")
+    counts: dict[int, dict[str, int]] = defaultdict(lambda: defaultdict(int))
+    for review_set, severity, n in [*own.annotate(Count("pk")), *of_unit.annotate(Count("pk"))]:
         if review_set is not None:
-            counts[review_set][severity] = n
-    return counts
+            counts[review_set][severity] += n
+    return {pk: dict(found) for pk, found in counts.items()}
 
 
 def _deciders(project: Project) -> dict[int, list[str]]:

@@ -7,13 +7,14 @@ import { ARROWS, lookOf } from "./marks.js";
 import { Scale } from "./scale.js";
 import { modeOf } from "./selection.js";
 
-const LEFT = 40, BOTTOM = 32, TOP = 20, RIGHT = 8;
+const LEFT = 40, BOTTOM = 32, TOP = 20, RIGHT = 8, ARROW_ROOM = 8;
 
 export class CrossPlot {
   constructor(surface, model, selection, marks, tell) {
     Object.assign(this, { surface, model, selection, marks, tell });
     surface.on({
-      draw: (pen) => this.draw(pen),
+      ground: (pen) => this.draw(pen),
+      points: (pen) => this.stamp(pen, null),
       overlay: (pen) => this.overlay(pen),
       pick: (x, y, event) => this.pick(x, y, event),
       area: (path, event) => selection.apply(caught(this.points, path), modeOf(event)),
@@ -53,8 +54,9 @@ export class CrossPlot {
     if (!this.x || !this.y) { this.points = new Points(1); this.grid = new Grid(this.points); return; }
     const { width, height } = this.surface;
     const box = this.box = { left: LEFT, right: width - RIGHT, top: TOP, bottom: height - BOTTOM };
-    this.scaleX = new Scale(this.viewX, this.plot.invert_x ? [box.right, box.left] : [box.left, box.right], this.x.log);
-    this.scaleY = new Scale(this.viewY, this.plot.invert_y ? [box.top, box.bottom] : [box.bottom, box.top], this.y.log);
+    const across = [box.left + (this.x.below ? ARROW_ROOM : 0), box.right], up = [box.bottom - (this.y.below ? ARROW_ROOM : 0), box.top];
+    this.scaleX = new Scale(this.viewX, this.plot.invert_x ? across.reverse() : across, this.x.log);
+    this.scaleY = new Scale(this.viewY, this.plot.invert_y ? up.reverse() : up, this.y.log);
     pen.fillStyle = "#fff"; pen.fillRect(box.left, box.top, box.right - box.left, box.bottom - box.top);
     drawX(pen, this.scaleX, { ...box, edge: box.bottom, count: (box.right - box.left) / 45 });
     drawY(pen, this.scaleY, { ...box, count: (box.bottom - box.top) / 32 });
@@ -64,7 +66,15 @@ export class CrossPlot {
     pen.save();
     this.#clip(pen);
     for (const fit of this.plot.fits ?? []) this.#fit(pen, fit);
-    this.marks.stampAll(pen, this.points);
+    pen.restore();
+  }
+
+  /** All marks, or those of the rows that are on. */
+  stamp(pen, only) {
+    if (!this.box) return;
+    pen.save();
+    this.#clip(pen);
+    this.marks.stampAll(pen, this.points, only);
     pen.restore();
   }
 
@@ -119,10 +129,7 @@ export class CrossPlot {
 
   overlay(pen) {
     if (!this.selection.count || !this.points) return false;
-    pen.save();
-    if (this.box) this.#clip(pen);
-    this.marks.stampAll(pen, this.points, this.selection.on);
-    pen.restore();
+    this.stamp(pen, this.selection.on);
     return true;
   }
 

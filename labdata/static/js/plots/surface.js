@@ -1,5 +1,5 @@
-// Two canvases one over the other, and the gestures made on them. The base is drawn when data or view change, the
-// overlay when the selection does; while something is selected the base is dimmed by a class.
+// Three canvases one over the other, and the gestures made on them. Ground (axes, bands) and points are drawn when data
+// or view change, the overlay when the selection does; while something is selected a class dims the points.
 
 import { rectangle } from "./lasso.js";
 
@@ -11,7 +11,8 @@ export class Surface {
     this.box = box;
     this.tools = tools;
     this.ratio = window.devicePixelRatio || 1;
-    this.base = this.#canvas("plot-base");
+    this.ground = this.#canvas("plot-ground");
+    this.points = this.#canvas("plot-points");
     this.overlay = this.#canvas("plot-overlay");
     this.trail = null;
     this.handlers = {};
@@ -19,7 +20,7 @@ export class Surface {
     new ResizeObserver(() => this.#resize()).observe(box);
   }
 
-  /** Handlers: draw(), overlay(), pick(x, y, event), area(path, event), pan(dx, dy), zoom(x, y, factor), hover(x, y). */
+  /** Handlers: ground(pen), points(pen), overlay(pen) -> whether anything is selected, pick(x, y, event), area(path, event), pan(dx, dy), zoom(x, y, factor), hover(x, y). */
   on(handlers) { Object.assign(this.handlers, handlers); this.#resize(); }
 
   #canvas(name) {
@@ -32,16 +33,16 @@ export class Surface {
 
   #resize() {
     const width = Math.floor(this.box.clientWidth), height = Math.floor(this.box.clientHeight);
-    if (!width || !height || !this.handlers.draw) return;
+    if (!width || !height || !this.handlers.ground) return;
     this.width = width; this.height = height;
-    for (const canvas of [this.base, this.overlay]) {
+    for (const canvas of [this.ground, this.points, this.overlay]) {
       canvas.width = width * this.ratio; canvas.height = height * this.ratio;
       canvas.style.width = `${width}px`; canvas.style.height = `${height}px`;
     }
     this.redraw();
   }
 
-  /** A cleared pen in CSS pixels on the base or the overlay. */
+  /** A cleared pen in CSS pixels on one of the canvases. */
   pen(canvas) {
     const pen = canvas.getContext("2d");
     pen.setTransform(this.ratio, 0, 0, this.ratio, 0, 0);
@@ -51,14 +52,15 @@ export class Surface {
 
   redraw() {
     if (!this.width) return;
-    this.handlers.draw(this.pen(this.base));
+    this.handlers.ground(this.pen(this.ground));
+    this.handlers.points(this.pen(this.points));
     this.drawOverlay();
   }
 
   drawOverlay() {
     if (!this.width) return;
     const pen = this.pen(this.overlay);
-    this.base.classList.toggle("dimmed", this.handlers.overlay(pen));
+    this.points.classList.toggle("dimmed", this.handlers.overlay(pen));
     if (this.trail) this.#drawTrail(pen);
   }
 
@@ -97,7 +99,8 @@ export class Surface {
     box.addEventListener("pointerleave", () => this.handlers.hover?.(-1, -1));
     box.addEventListener("wheel", (event) => {
       event.preventDefault();
-      this.handlers.zoom?.(...this.#at(event), Math.exp(Math.sign(event.deltaY) * Math.min(0.25, Math.abs(event.deltaY) / 400)));
+      const turn = event.deltaY || event.deltaX; // with Shift some systems turn the wheel sideways
+      this.handlers.zoom?.(...this.#at(event), Math.exp(Math.sign(turn) * Math.min(0.25, Math.abs(turn) / 400)), event);
     }, { passive: false });
     box.addEventListener("dblclick", () => this.handlers.reset?.());
   }

@@ -21,10 +21,11 @@ export class ResultTable {
   update(model) {
     this.model = model;
     this.heads = [
-      { key: "depth", label: "Depth [m]", text: (row) => depthText(model, row), number: (row) => model.top[row] },
+      { key: "depth", label: "Depth", unit: "m", text: (row) => depthText(model, row), number: (row) => model.top[row] },
       { key: "sample", label: "Sample", text: (row) => model.name(row), word: (row) => model.rows.label[row] },
-      { key: "kind", label: "Kind", text: (row) => model.rows.kind[row], word: (row) => model.rows.kind[row] },
       ...model.columns.map((column) => ({ key: column.key, column, label: column.label, unit: column.computed ? "computed" : column.unit, text: (row) => model.shown(column, row), number: (row) => column.value[row] })),
+      { key: "kind", label: "Kind", text: (row) => model.rows.kind[row], word: (row) => model.rows.kind[row] },
+      { key: "formation", label: "Formation", text: (row) => model.rows.formation[row], word: (row) => model.rows.formation[row] },
     ];
     this.#head();
     this.arrange();

@@ -7,21 +7,22 @@ import { lookOf } from "./marks.js";
 import { Scale, domainOf, extent, tickText } from "./scale.js";
 import { modeOf } from "./selection.js";
 
-const HEAD = 46, FOOT = 6, DEPTHS = 38, UNITS = 62, GAP = 5;
+const HEAD = 46, FOOT = 6, DEPTHS = 38, UNITS = 62, GAP = 5, ARROW_ROOM = 12;
 
 export class TrackStrip {
   /** `model`: rows, depth (top, middle, base), bands; `columns`: the tracks to draw. */
   constructor(surface, model, selection, marks, tell) {
-    Object.assign(this, { surface, model, selection, marks, tell, columns: [] });
+    Object.assign(this, { surface, model, selection, marks, tell, columns: [], domains: new Map() });
     this.whole = domainOf(...depthExtent(model));
     this.view = [...this.whole];
     surface.on({
-      draw: (pen) => this.draw(pen),
+      ground: (pen) => this.draw(pen),
+      points: (pen) => this.stamp(pen, null),
       overlay: (pen) => this.overlay(pen),
       pick: (x, y, event) => this.pick(x, y, event),
       area: (path, event) => selection.apply(caught(this.points, path), modeOf(event)),
       pan: (_, dy) => this.#shift(-dy),
-      zoom: (_, y, factor) => this.zoom(factor, y),
+      zoom: (x, y, factor, event) => (event.shiftKey ? this.#zoomValues(x, factor) : this.zoom(factor, y)),
       reset: () => this.reset(),
       hover: (x, y) => this.hover(x, y),
     });
@@ -32,7 +33,15 @@ export class TrackStrip {
 
   update(model) { this.model = model; this.whole = domainOf(...depthExtent(model)); }
 
-  reset() { this.view = [...this.whole]; this.surface.redraw(); }
+  reset() { this.view = [...this.whole]; this.domains.clear(); this.surface.redraw(); }
+
+  /** Zoom the values of the one track under the pointer. */
+  #zoomValues(x, factor) {
+    const place = this.places.find(({ left, right }) => x >= left && x <= right);
+    if (!place) return;
+    this.domains.set(place.column.key, place.scale.domain.map((end) => place.scale.from(x + (place.scale.to(end) - x) * factor)));
+    this.surface.redraw();
+  }
 
   /** Zoom about a pixel, or the middle. Stays inside the well. */
   zoom(factor, y = (HEAD + this.surface.height) / 2) {
@@ -63,9 +72,13 @@ export class TrackStrip {
     this.places.forEach((place, n) => this.#track(pen, place, n));
     this.#tops(pen);
     this.grid = new Grid(this.points);
+  }
+
+  /** All marks, or those of the rows that are on. */
+  stamp(pen, only) {
     pen.save();
     this.#clip(pen);
-    this.marks.stampAll(pen, this.points);
+    this.marks.stampAll(pen, this.points, only);
     pen.restore();
   }
 
@@ -150,7 +163,7 @@ export class TrackStrip {
 
   #track(pen, place, n) {
     const { column, left, right } = place, { top, bottom } = this.box;
-    place.scale = new Scale(column.domain, [left + 4, right - 4], column.log);
+    place.scale = new Scale(this.domains.get(column.key) ?? column.domain, [left + (column.below ? ARROW_ROOM : 4), right - (column.above ? ARROW_ROOM : 4)], column.log);
     pen.fillStyle = "#fff"; pen.fillRect(left, top, right - left, bottom - top);
     drawX(pen, place.scale, { top, bottom, edge: top, above: true, count: (right - left) / 34, within: [left - 1, right + 1] });
     frame(pen, { left, right, top, bottom });
@@ -165,7 +178,7 @@ export class TrackStrip {
     const { middle } = this.model, [low, high] = this.view;
     for (let row = 0; row < middle.length; row += 1) {
       const value = column.value[row], depth = middle[row];
-      if (value === value && depth >= low && depth <= high && !(column.log && value <= 0)) {
+      if (value >= scale.domain[0] && value <= scale.domain[1] && depth >= low && depth <= high) {
         this.points.push(scale.to(value), this.depth.to(depth), row, n, lookOf(column.state[row], column.arrow[row]));
       }
     }
@@ -173,10 +186,7 @@ export class TrackStrip {
 
   overlay(pen) {
     if (!this.selection.count) return false;
-    pen.save();
-    this.#clip(pen);
-    this.marks.stampAll(pen, this.points, this.selection.on);
-    pen.restore();
+    this.stamp(pen, this.selection.on);
     return true;
   }
 

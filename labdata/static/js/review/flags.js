@@ -25,17 +25,20 @@ export class FlagPanel {
   #group(rule, flags) {
     const left = flags.filter((flag) => !flag.answer), worst = flags.reduce((a, b) => (WEIGHT[a.severity] <= WEIGHT[b.severity] ? a : b)).severity;
     const group = make("details", { class: "rule", "data-rule": rule },
-      make("summary", {}, make("span", { class: `state state-${worst}` }, rule.replaceAll("_", " ")), make("span", { class: "count" }, left.length ? `${left.length} open${left.length < flags.length ? ` of ${flags.length}` : ""}` : `${flags.length} answered`)));
+      make("summary", {}, make("span", { class: `state state-${worst}` }, this.#title(rule)), make("span", { class: "count" }, left.length ? `${left.length} open${left.length < flags.length ? ` of ${flags.length}` : ""}` : `${flags.length} answered`)));
     group.open = this.open.has(rule);
     group.addEventListener("toggle", () => { if (group.open) { this.open.add(rule); this.#fill(group, flags); } else this.open.delete(rule); });
     if (group.open) this.#fill(group, flags);
     return group;
   }
 
+  #title(rule) { return this.model.data.rules[rule]?.[0] ?? rule.replaceAll("_", " "); }
+
   #fill(group, flags) {
     if (group.dataset.filled) return;
     group.dataset.filled = "yes";
-    const left = flags.filter((flag) => !flag.answer);
+    const left = flags.filter((flag) => !flag.answer), tests = this.model.data.rules[flags[0].rule]?.[1];
+    if (tests) group.append(make("p", { class: "tests" }, `${tests} `, make("code", {}, flags[0].rule)));
     group.append(this.#tools(flags, `all ${flags.length}`, left), make("ul", { class: "flags" }, ...flags.slice(0, SHOWN).map((flag) => this.#flag(flag))));
     if (flags.length > SHOWN) group.append(make("p", { class: "small muted" }, `${flags.length - SHOWN} more are in the table: select all of this rule to see them.`));
     group.append(make("p", { class: "small muted" }, `Source: ${flags[0].source}`));
@@ -53,7 +56,7 @@ export class FlagPanel {
   }
 
   #select(flags) {
-    const rows = flags.map((flag) => flag.row).filter((row) => row !== null && row !== undefined);
+    const rows = flags.flatMap((flag) => this.model.flagged(flag));
     const keys = [...new Set(flags.map((flag) => flag.key))].filter((key) => this.model.byKey.get(key) && !this.model.byKey.get(key).computed);
     this.selection.apply(rows);
     this.bar?.choose(keys.length ? keys : null);
@@ -88,11 +91,11 @@ export class FlagPanel {
   }
 
   #flag(flag) {
-    const where = flag.row === null || flag.row === undefined ? "whole well" : this.model.name(flag.row);
+    const where = flag.row === null || flag.row === undefined ? span(flag.interval) : this.model.name(flag.row), rows = this.model.flagged(flag);
     const item = make("li", {}, make("p", {}, make("strong", {}, where), ` ${flag.message}`),
       flag.answer ? make("p", { class: "small muted" }, `${flag.answer.answer === "agreed" ? "Agreed" : "Dismissed"} by ${flag.answer.by}: ${flag.answer.reason}`) : null);
-    const tools = this.#tools([flag], flag.row === null || flag.row === undefined ? "nothing to" : "it");
-    if (flag.row === null || flag.row === undefined) tools.firstChild.remove();
+    const tools = this.#tools([flag], rows.length === 1 ? "it" : plural(rows.length, "sample"));
+    if (!rows.length) tools.firstChild.remove();
     const more = make("details", { class: "more" }, make("summary", {}, "Evidence"));
     more.addEventListener("toggle", () => this.#evidence(more, flag), { once: true });
     item.append(tools, more);
@@ -106,6 +109,8 @@ export class FlagPanel {
     } catch (refusal) { more.append(make("p", { class: "state state-error" }, refusal.message)); }
   }
 }
+
+function span(interval) { return interval ? `${interval[0]}–${interval[1]} m` : "whole well"; }
 
 function compare(a, b) {
   for (let at = 0; at < a.length; at += 1) if (a[at] !== b[at]) return a[at] - b[at];

@@ -26,7 +26,7 @@ export class Model {
         : verdict === undecided && sent.flag[row] >= weighty ? rank.flagged : rank[this.data.verdicts[verdict]];
     }
     const domain = domainOf(...extent(value, sent.log ? 0 : undefined), sent);
-    return { ...sent, value, arrow, state, domain };
+    return { ...sent, value, arrow, state, domain, below: arrow.includes(ARROW["<"]), above: arrow.includes(ARROW[">"]) };
   }
 
   /** The column of an analyte: the first where two methods gave it. */
@@ -57,6 +57,15 @@ export class Model {
       const { result } = this.byKey.get(key);
       for (const row of rows) if (result[row] !== null) found.push(result[row]);
     }
+    return found;
+  }
+
+  /** Rows that a flag speaks of: its own, or those of its interval. */
+  flagged({ row, interval }) {
+    if (row !== null && row !== undefined) return [row];
+    if (!interval) return [];
+    const found = [];
+    for (let at = 0; at < this.count; at += 1) if (this.middle[at] >= interval[0] && this.middle[at] <= interval[1]) found.push(at);
     return found;
   }
 

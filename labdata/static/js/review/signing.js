@@ -18,7 +18,7 @@ export class SignPanel {
       make("dl", { class: "facts" }, ...["results", "accepted", "rejected", "held", "undecided"].flatMap((name) => [make("dt", {}, name), make("dd", {}, counts[name].toLocaleString("en-GB"))])),
       make("p", {}, Object.keys(people).length ? `Decided by ${Object.entries(people).map(([name, n]) => `${name} (${n})`).join(", ")}.` : "Nobody has decided anything yet."),
       ...this.#lists(model.data.decisions),
-      make("h3", {}, "What happened"), this.#history(history),
+      make("h2", {}, "What happened"), this.#history(history),
     ].filter(Boolean));
   }
 
@@ -31,7 +31,7 @@ export class SignPanel {
   #lists(decisions) {
     return ["rejected", "held"].flatMap((verdict) => {
       const some = decisions.filter((one) => one.verdict === verdict);
-      return some.length ? [make("h3", {}, `${plural(some.length, "result")} ${verdict}`), make("ul", { class: "decided" }, ...this.#byReason(some))] : [];
+      return some.length ? [make("h2", {}, `${plural(some.length, "result")} ${verdict}`), make("ul", { class: "decided" }, ...this.#byReason(some))] : [];
     });
   }
 
