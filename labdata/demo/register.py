@@ -30,11 +30,11 @@ from labdata.registry.names import name_key
 SENT = datetime(2026, 1, 12, 10, 30, tzinfo=UTC)
 CORE_STORE = "Norrowland core store, rack 14"
 CAUTION = "Cuttings from below 2520 m were drilled with oil-based mud: wash with solvent before pyrolysis or say so."
-# consignment number, laboratory, wells, methods ordered
+# consignment number, laboratory, wells, methods reported, methods awaited, cautions
 CONSIGNMENTS = (
-    ("QB-C-001", BRACKWATER, ("Tarrow 1",), ("pyrolysis", "reflectance"), CAUTION),
-    ("QB-C-002", NINEFOLD, ("Tarrow 2",), ("pyrolysis",), ""),
-    ("QB-C-003", NINEFOLD, ("Fennick 1", "Sallowby 1"), ("pyrolysis", "carbon"), "Keep plugs for thin sections."),
+    ("QB-C-001", BRACKWATER, ("Tarrow 1",), ("pyrolysis", "reflectance"), ("isotopes",), CAUTION),
+    ("QB-C-002", NINEFOLD, ("Tarrow 2",), ("pyrolysis",), (), ""),
+    ("QB-C-003", NINEFOLD, ("Fennick 1", "Sallowby 1"), ("pyrolysis", "carbon"), (), "Keep plugs for thin sections."),
 )
 
 
@@ -96,7 +96,7 @@ def _along(well: Well, plan: DemoWell) -> Iterator[models.Model]:
 @transaction.atomic
 def set_up_custody(project: Project, coordinator: User) -> None:
     """Consignments of the samples that have landed, what was ordered, and where the samples have been."""
-    for number, laboratory, wells, methods, cautions in CONSIGNMENTS:
+    for number, laboratory, wells, reported, awaited, cautions in CONSIGNMENTS:
         samples = list(Sample.objects.filter(well__project=project, well__name__in=wells))
         if not samples or Consignment.objects.filter(project=project, number=number).exists():
             continue
@@ -105,13 +105,18 @@ def set_up_custody(project: Project, coordinator: User) -> None:
             sent_at=SENT, cautions=cautions,
         )  # fmt: skip
         consignment.samples.set(samples)
-        for method in Method.objects.filter(code__in=methods):
-            AnalysisRequest.objects.create(
-                consignment=consignment, method=method, state=AnalysisRequest.State.REPORTED, due=SENT.date()
-            )
+        _order(consignment, reported, AnalysisRequest.State.REPORTED)
+        _order(consignment, awaited, AnalysisRequest.State.REQUESTED)
         CustodyEvent.objects.bulk_create(_journey(samples, laboratory, coordinator), batch_size=1000)
         after = {"number": number, "laboratory": laboratory.name, "samples": len(samples)}
         audit.record("consignment.sent", consignment, actor=coordinator, project=project, after=after)
+
+
+def _order(consignment: Consignment, methods: Iterable[str], state: AnalysisRequest.State) -> None:
+    """What was ordered with the consignment, due six weeks after it was sent."""
+    due = (SENT + timedelta(weeks=6)).date()
+    for method in Method.objects.filter(code__in=list(methods)):
+        AnalysisRequest.objects.create(consignment=consignment, method=method, state=state, due=due)
 
 
 def _journey(samples: Iterable[Sample], laboratory: DemoLaboratory, coordinator: User) -> Iterator[CustodyEvent]:

@@ -63,7 +63,7 @@ def show(stage: Stage) -> None:
     """Bring the demonstration to where every page has something to show."""
     if not to_do():
         return
-    for file in files():
+    for file in _missing(stage.project):
         if file.name == AMENDED:
             _first_release(stage)
         take_in(stage, file)
@@ -74,16 +74,25 @@ def show(stage: Stage) -> None:
 
 def finish(stage: Stage) -> Release:
     """Take in whatever is not in yet, decide on everything, sign it and release it."""
-    held = set(Upload.objects.filter(project=stage.project).values_list("file_name", flat=True))
-    for file in files():
-        if file.name not in held:
-            take_in(stage, file)
+    for file in _missing(stage.project):
+        take_in(stage, file)
     register.set_up_custody(stage.project, stage.users["coordinator"])
     for review_set in _open_sets(stage.project):
         stage.say(f"Review of {review_set}")
         reviewing.decide_all(review_set, stage.users["geochemist"])
         _sign(stage, review_set)
     return _release(stage, LAST_RELEASE)
+
+
+def _missing(project: Project) -> list[DemoFile]:
+    """Files that are not in yet; what an interrupted run left half done is ended first."""
+    run_all_here(project)
+    held = set(
+        Upload.objects.filter(project=project)
+        .exclude(outcome=Upload.Outcome.FAILED)
+        .values_list("file_name", flat=True)
+    )
+    return [file for file in files() if file.name not in held]
 
 
 def take_in(stage: Stage, file: DemoFile) -> Upload:

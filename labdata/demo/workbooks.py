@@ -115,9 +115,10 @@ def two_wells() -> bytes:
 
 @cache
 def reflectance() -> bytes:
-    """Vitrinite reflectance of two wells: mean, standard deviation, number of readings."""
+    """Vitrinite reflectance of two wells, with a column that intake has no field for."""
     title = _title(BRACKWATER, "BRL-24140", 1, Method="Random reflectance in oil, polished whole-rock pellets")
     table = pd.concat([_named(reporting.reflectance(w, 10), w) for w in (TARROW_1, SALLOWBY_1)])
+    table["pellet"] = [f"P-{number}" for number in range(881, 881 + len(table))]
     columns = (
         Column("well", "Well"), *IDENTITY, Column("top", "Top depth", "m", 1), Column("base", "Base depth", "m", 1),
         Column("ro", "Ro mean", "%", 2), Column("ro_sd", "Ro SD", "%", 3), Column("ro_n", "No. of readings", "", 0),
@@ -179,7 +180,7 @@ FILES = (
     DemoFile("BRL-24117_Tarrow-1_pyrolysis.xlsx", BRACKWATER, tarrow_1, TARROW_1.name),
     DemoFile("tarrow2_pyrolysis_NFA-2210.csv", NINEFOLD, tarrow_2),
     DemoFile("NFA-2231_Fennick_Sallowby.xlsx", NINEFOLD, two_wells),
-    DemoFile("BRL-24140_reflectance.xlsx", BRACKWATER, reflectance),
+    DemoFile("BRL-24140_reflectance.xlsx", BRACKWATER, reflectance, outcome="imported_with_findings"),
     DemoFile("NFA-2236_Tarrow-1_XRF.xlsx", NINEFOLD, elemental, TARROW_1.name),
     DemoFile("Fennick1_core_carbon_prelim.csv", NINEFOLD, fractions, outcome="waiting"),
     DemoFile("BRL-24155_draft.xlsx", BRACKWATER, refused, outcome="refused"),
