@@ -18,6 +18,7 @@ from qc.rules import RULES
 from qc.rules.engine import parameters, run
 from qc.rules.evidence import Witness
 from qc.rules.rule import OUTCOMES, Answer, Finding
+from qc.rules.spans import num
 from qc.rules.table import Table
 from qc.rulesets import effective_rule_set
 from qc.tables import read, results_of, rock
@@ -110,7 +111,7 @@ def flags_of(table: Table, wells: Sequence[Well], answers: dict[str, Answer], ru
         values = parameters(rule, rule_set.thresholds)
         for finding in answers[rule.id].findings if rule.id in answers else ():
             row = finding.row if finding.row is not None else finding.rows[0]
-            well = int(table.rows.at[row, "well"])
+            well = int(num(table.rows, row, "well"))
             flag = Flag(
                 well=wells[well], rule=rule.id, family=rule.family, severity=finding.severity, analyte=finding.analyte,
                 message=finding.message, evidence=witness.record(rule, values, finding), source=rule.source,
@@ -125,14 +126,14 @@ def _speaks_of(table: Table, finding: Finding) -> dict[str, Any]:
     """The analysis, result and value that a flag points at; none of them for a whole unit."""
     if finding.row is None:
         return {}
-    held = f"{finding.analyte}_id" in table.rows.columns and table.rows.at[finding.row, f"{finding.analyte}_id"] >= 0
+    held = f"{finding.analyte}_id" in table.rows.columns and num(table.rows, finding.row, f"{finding.analyte}_id") >= 0
     if not held:
-        return {"analysis_id": int(table.rows.at[finding.row, "analysis"])}
-    value = float(table.rows.at[finding.row, finding.analyte])
-    holder = int(table.rows.at[finding.row, f"{finding.analyte}_row"])
+        return {"analysis_id": int(num(table.rows, finding.row, "analysis"))}
+    value = num(table.rows, finding.row, finding.analyte)
+    holder = int(num(table.rows, finding.row, f"{finding.analyte}_row"))
     return {
-        "analysis_id": int(table.rows.at[holder, "analysis"]),
-        "result_id": int(table.rows.at[finding.row, f"{finding.analyte}_id"]),
+        "analysis_id": int(num(table.rows, holder, "analysis")),
+        "result_id": int(num(table.rows, finding.row, f"{finding.analyte}_id")),
         "value": None if value != value else value,  # noqa: PLR0124 - NaN
     }
 

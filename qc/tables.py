@@ -14,6 +14,7 @@ from django.db.models import QuerySet
 from labdata.models import Analysis, Analyte, CoreRun, FormationTop, MudInterval, Result, SourceColumn, Well
 from qc.models import Decision, Verdict
 from qc.rules.decimals import batch_of, half_units
+from qc.rules.spans import num
 from qc.rules.strat_top_mismatch import current, formations, plain
 from qc.rules.table import ANALYTES, CORES, IDENTITY, MUDS, TOPS, VALUE_DEFAULTS, Table, frame, no_things
 
@@ -43,7 +44,7 @@ def read(wells: Sequence[Well]) -> Table:
     place = {well.pk: number for number, well in enumerate(wells)}
     rows = _analyses(place)
     tops = _along(FormationTop.objects.filter(well__in=place), ("well_id", "name", "top_md_m", "version"), TOPS, place)
-    columns = {str(name): rows[name].to_numpy() for name in rows.columns if name in IDENTITY}
+    columns: dict[str, object] = {str(name): rows[name].to_numpy() for name in rows.columns if name in IDENTITY}
     columns["unit"] = _units(rows, tops)
     held = _results(place, rows)
     for analyte in ANALYTES:
@@ -107,9 +108,9 @@ def _units(rows: pd.DataFrame, tops: pd.DataFrame) -> np.ndarray:
     made = spelled.where(stated.ne(""), "").to_numpy(dtype=object)
     blank = stated.eq("") & rows["top_m"].notna() & rows["depth_kind"].ne("TVD")
     for well in sorted(set(tops["well"])):
-        own = current(tops, int(well))
+        own = current(tops, well)
         for row in rows.index[blank & (rows["well"] == well)]:
-            made[row] = next(iter(formations(own, rows.at[row, "top_m"], rows.at[row, "top_m"])), "")
+            made[row] = next(iter(formations(own, num(rows, row, "top_m"), num(rows, row, "top_m"))), "")
     return made
 
 

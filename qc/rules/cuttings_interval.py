@@ -3,6 +3,7 @@
 import pandas as pd
 
 from qc.rules.rule import CANNOT_EVALUATE, NOT_APPLICABLE, WARN, Answer, Finding, Rule, fired, judge, merge
+from qc.rules.spans import line
 from qc.rules.table import Table
 
 
@@ -39,7 +40,7 @@ def _well(cuttings: pd.DataFrame, limits: tuple[float, float, int, float]) -> An
     outcome = judge(
         cuttings.index, applies=True, known=lengths.notna(), fires=facts[["odd", "overlap", "far"]].any(axis=1)
     )
-    return Answer(outcome, [_finding(facts.loc[row], row, usual, length_ratio) for row in fired(outcome)])
+    return Answer(outcome, [_finding(line(facts, row), row, usual, length_ratio) for row in fired(outcome)])
 
 
 def _finding(fact: pd.Series, row: int, usual: float, ratio: float) -> Finding:

@@ -4,6 +4,7 @@ import numpy as np
 import pandas as pd
 
 from qc.rules.rule import REJECT, Answer, Finding, Rule, fired, judge
+from qc.rules.spans import num
 from qc.rules.table import Table
 
 
@@ -32,7 +33,7 @@ def check(table: Table, *, tolerance: float) -> Answer:
 
 
 def _finding(samples: pd.DataFrame, row: int, start: float) -> Finding:
-    top = float(samples.at[row, "top_m"])
+    top = num(samples, row, "top_m")
     shown = f"{start:.2f} m below the datum" if np.isfinite(start) else "at the datum or below it"
     text = f"{top:.2f} m is above ground or sea floor ({shown})."
     more = {

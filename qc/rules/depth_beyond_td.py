@@ -4,6 +4,7 @@ import numpy as np
 import pandas as pd
 
 from qc.rules.rule import REJECT, Answer, Finding, Rule, fired, judge
+from qc.rules.spans import line
 from qc.rules.table import Table
 
 
@@ -18,7 +19,7 @@ def check(table: Table, *, tolerance: float, tolerance_relative: float) -> Answe
     applies = samples["kind"].ne("outcrop").to_numpy()
     outcome = judge(samples.index, applies=applies, known=~np.isnan(td) & ~np.isnan(deepest), fires=fires)
     facts = pd.DataFrame({"deepest": deepest, "td": td, "slack": slack}, index=samples.index)
-    return Answer(outcome, [_finding(facts.loc[row], row) for row in fired(outcome)])
+    return Answer(outcome, [_finding(line(facts, row), row) for row in fired(outcome)])
 
 
 def _finding(fact: pd.Series, row: int) -> Finding:

@@ -3,6 +3,7 @@
 import pandas as pd
 
 from qc.rules.rule import CANNOT_EVALUATE, FIRE, NOT_APPLICABLE, PASS, REJECT, WARN, Answer, Finding, Rule
+from qc.rules.spans import num
 from qc.rules.table import Table
 
 STRICT = frozenset({"cuttings", "composite"})
@@ -34,7 +35,7 @@ def check(table: Table, *, swapped_share: float, point_share: float) -> Answer:
 
 
 def _ends(table: Table, row: int) -> str:
-    return f"top {table.rows.at[row, 'top_m']:.2f} m, base {table.rows.at[row, 'base_m']:.2f} m"
+    return f"top {num(table.rows, row, 'top_m'):.2f} m, base {num(table.rows, row, 'base_m'):.2f} m"
 
 
 def _swapped(table: Table, batch: pd.DataFrame, of: int) -> Finding:
@@ -54,7 +55,7 @@ def _reversed(table: Table, row: int) -> Finding:
         "alternatives": ["typing error in top or base"],
         "discriminating_test": "compare with the sample list of the well",
     }
-    top, base = float(table.rows.at[row, "top_m"]), float(table.rows.at[row, "base_m"])
+    top, base = num(table.rows, row, "top_m"), num(table.rows, row, "base_m")
     return Finding(row, "", REJECT, text, (), top, base, more=more)
 
 
@@ -64,7 +65,7 @@ def _no_length(table: Table, row: int) -> Finding:
         "alternatives": ["base not filled in", "point depth"],
         "discriminating_test": "compare with the sample list of the well",
     }
-    top, base = float(table.rows.at[row, "top_m"]), float(table.rows.at[row, "base_m"])
+    top, base = num(table.rows, row, "top_m"), num(table.rows, row, "base_m")
     return Finding(row, "", WARN, text, (), top, base, more=more)
 
 

@@ -6,6 +6,7 @@ import numpy as np
 import pandas as pd
 
 from qc.rules.rule import INFO, NOT_APPLICABLE, PASS, REJECT, WARN, Answer, Finding, Rule, merge, say
+from qc.rules.spans import num, word
 from qc.rules.table import ANALYTES, Table
 
 SLOT = ["well", "kind", "top_m", "base_m", "method", "file"]
@@ -39,26 +40,26 @@ def _pair(table: Table, first: int, second: int) -> Finding | None:
     rows = table.rows
     shared = [
         name for name in ANALYTES
-        if all(rows.at[row, f"{name}_row"] == row and not np.isnan(rows.at[row, name]) for row in (first, second))
+        if all(num(rows, row, f"{name}_row") == row and not np.isnan(num(rows, row, name)) for row in (first, second))
     ]  # fmt: skip
     if not shared:
         return None
     unlike = [
         name for name in shared
-        if (rows.at[first, name], rows.at[first, f"{name}_q"]) != (rows.at[second, name], rows.at[second, f"{name}_q"])
+        if (num(rows, first, name), word(rows, first, f"{name}_q")) != (num(rows, second, name), word(rows, second, f"{name}_q"))
     ]  # fmt: skip
-    where = f"at {rows.at[second, 'top_m']:.2f} m"
+    where = f"at {num(rows, second, 'top_m'):.2f} m"
     more = {"discriminating_test": "ask the laboratory whether the second is a replicate"}
     if not unlike:
-        text = f"Two lines {where} hold the same {rows.at[second, 'method']} results to the last decimal."
+        text = f"Two lines {where} hold the same {word(rows, second, 'method')} results to the last decimal."
         causes = {"alternatives": ["line entered twice"]}
         return Finding(
             second, shared[0], INFO, text, tuple(shared[:4]), None, None, rows=(first,), more={**causes, **more}
         )
     name = unlike[0]
-    text = f"Two {rows.at[second, 'method']} lines {where} differ ({name} {say(rows.at[first, name])} and {say(rows.at[second, name])}) and neither is flagged a replicate."
+    text = f"Two {word(rows, second, 'method')} lines {where} differ ({name} {say(num(rows, first, name))} and {say(num(rows, second, name))}) and neither is flagged a replicate."
     causes = {"alternatives": ["replicate not flagged", "depth of one sample wrong", "two samples of one depth"]}
-    pair = [float(rows.at[first, name]), float(rows.at[second, name])]
+    pair = [num(rows, first, name), num(rows, second, name)]
     return Finding(second, name, WARN, text, tuple(unlike[:4]), pair, None, rows=(first,), more={**causes, **more})
 
 

@@ -35,6 +35,7 @@ class Witness:
         self._order: dict[tuple[int, str], list[int]] = {}
         self._place: dict[int, int] = {}
         deep = table.rows[table.rows["top_m"].notna()].sort_values(["well", "method", "top_m"], kind="stable")
+        key: Any
         for key, group in deep.groupby(["well", "method"], sort=False):
             members = [int(row) for row in group.index]
             self._order[key] = members

@@ -3,7 +3,7 @@
 import numpy as np
 import pandas as pd
 
-from qc.rules.spans import Bools, Floats, exact, span
+from qc.rules.spans import Bools, Floats, exact, num, span
 from qc.rules.table import CORE_KINDS, NOT_ROCK
 
 
@@ -56,4 +56,4 @@ def positive(values: Floats) -> Floats:
 
 def made_or_reported(rows: pd.DataFrame, row: int, index: str, otherwise: str) -> str:
     """The index where the laboratory reported it, else the input that stands for it."""
-    return index if rows.at[row, f"{index}_id"] >= 0 else otherwise
+    return index if num(rows, row, f"{index}_id") >= 0 else otherwise

@@ -6,7 +6,7 @@ import pandas as pd
 from qc.rules.facts import core, not_rock, valid_tmax
 from qc.rules.mud import under_oil_based
 from qc.rules.rule import INFO, WARN, Answer, Finding, Rule, fired, judge, say
-from qc.rules.spans import Bools, exact, span
+from qc.rules.spans import Bools, exact, line, num, span
 from qc.rules.table import Table
 
 
@@ -27,7 +27,7 @@ def check(
     facts = pd.DataFrame(
         {"osi": osi.lo, "tmax": tmax, "lean": lean, "oily": oily, "expected": expected}, index=rows.index
     )
-    return Answer(outcome, [_finding(rows, facts.loc[row], row, osi_max) for row in fired(outcome)])
+    return Answer(outcome, [_finding(rows, line(facts, row), row, osi_max) for row in fired(outcome)])
 
 
 def _expected(rows: pd.DataFrame, mature: Bools, lean: Bools, oily: Bools) -> Bools:
@@ -42,7 +42,7 @@ def _finding(rows: pd.DataFrame, fact: pd.Series, row: int, osi_max: float) -> F
     elif fact["oily"]:
         text += ", under an oil-based drilling fluid"
     elif fact["lean"]:
-        text += f", in rock of only {say(rows.at[row, 'TOC'])} wt% TOC"
+        text += f", in rock of only {say(num(rows, row, 'TOC'))} wt% TOC"
     elif np.isnan(fact["tmax"]):
         text += "; no valid Tmax says whether the rock could have made it"
     else:

@@ -5,7 +5,7 @@ import pandas as pd
 
 from qc.rules.facts import made_or_reported, not_rock
 from qc.rules.rule import INFO, REJECT, WARN, Answer, Finding, Rule, fired, judge, say
-from qc.rules.spans import span
+from qc.rules.spans import line, span
 from qc.rules.table import Table
 
 
@@ -25,7 +25,7 @@ def check(table: Table, *, ceiling: float, warn_above: float, info_above: float)
     outcome = judge(rows.index, applies=~not_rock(rows), known=known, fires=fires)
     numbers = pd.DataFrame({"lo": rounded.lo, "hi": total.hi, "sure": total.lo}, index=rows.index)
     limits = (ceiling, warn_above, info_above)
-    return Answer(outcome, [_finding(rows, numbers.loc[row], row, limits) for row in fired(outcome)])
+    return Answer(outcome, [_finding(rows, line(numbers, row), row, limits) for row in fired(outcome)])
 
 
 def _finding(rows: pd.DataFrame, number: pd.Series, row: int, limits: tuple[float, float, float]) -> Finding:

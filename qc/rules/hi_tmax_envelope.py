@@ -5,7 +5,7 @@ import pandas as pd
 
 from qc.rules.facts import hydrogen_index, made_or_reported, not_rock, valid_tmax
 from qc.rules.rule import WARN, Answer, Finding, Rule, fired, judge, say
-from qc.rules.spans import reported
+from qc.rules.spans import line, num, reported
 from qc.rules.table import Table
 
 
@@ -25,13 +25,11 @@ def check(
     known = ~np.isnan(tmax) & ~np.isnan(hi)
     outcome = judge(rows.index, applies=reported(rows, "TMAX") & ~not_rock(rows) & ~alginite, known=known, fires=fires)
     facts = pd.DataFrame({"hi": hi, "limit": limit}, index=rows.index)
-    return Answer(outcome, [_finding(rows, facts.loc[row], row) for row in fired(outcome)])
+    return Answer(outcome, [_finding(rows, line(facts, row), row) for row in fired(outcome)])
 
 
 def _finding(rows: pd.DataFrame, fact: pd.Series, row: int) -> Finding:
-    text = (
-        f"HI {say(fact['hi'])} is above {say(fact['limit'])}, the most expected at Tmax {say(rows.at[row, 'TMAX'])} °C."
-    )
+    text = f"HI {say(fact['hi'])} is above {say(fact['limit'])}, the most expected at Tmax {say(num(rows, row, 'TMAX'))} °C."
     more = {
         "alternatives": [
             "Type I kerogen",

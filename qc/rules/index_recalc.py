@@ -6,7 +6,7 @@ import numpy as np
 import pandas as pd
 
 from qc.rules.rule import REJECT, WARN, Answer, Finding, Rule, fired, judge, merge, say
-from qc.rules.spans import Bools, Span, censored, reported, span
+from qc.rules.spans import Bools, Span, censored, line, num, reported, span
 from qc.rules.table import Table
 
 SLIPS = (100.0, 10.0, 0.1, 0.01)
@@ -66,7 +66,7 @@ def _check(rows: pd.DataFrame, index: Index, slip_tolerance: float) -> Answer:
     applies = reported(rows, index.code) & ~_divisor_within_rounding(rows, index)
     outcome = judge(rows.index, applies=applies, known=sure, fires=known & ~found)
     facts = _facts(rows, index, given, spans)
-    return Answer(outcome, [_finding(rows, row, index, facts.loc[row], slip_tolerance) for row in fired(outcome)])
+    return Answer(outcome, [_finding(rows, row, index, line(facts, row), slip_tolerance) for row in fired(outcome)])
 
 
 def _facts(rows: pd.DataFrame, index: Index, given: Span, spans: dict[str, Span]) -> pd.DataFrame:
@@ -105,7 +105,7 @@ def _swapped(rows: pd.DataFrame, index: Index, given: Span) -> Bools:
 
 def _finding(rows: pd.DataFrame, row: int, index: Index, fact: pd.Series, slip_tolerance: float) -> Finding:
     bottom, swapped = str(fact["bottom"]), bool(fact["swapped"])
-    value = float(rows.at[row, index.code])
+    value = num(rows, row, index.code)
     exactly = float(recomputed(rows.loc[[row]], index, bottom)[0])
     slip = _slip(value, exactly, slip_tolerance)
     inputs = tuple(dict.fromkeys((index.code, index.top, index.bottom, bottom)))
@@ -121,7 +121,7 @@ def _finding(rows: pd.DataFrame, row: int, index: Index, fact: pd.Series, slip_t
         "allowed": [round(float(fact["lo"]), 6), round(float(fact["hi"]), 6)],
         "reported": [round(float(fact["given_lo"]), 6), round(float(fact["given_hi"]), 6)],
         "recomputed_with": bottom,
-        "half_units": {name: float(rows.at[row, f"{name}_h"]) for name in inputs if rows.at[row, f"{name}_id"] >= 0},
+        "half_units": {name: num(rows, row, f"{name}_h") for name in inputs if num(rows, row, f"{name}_id") >= 0},
         "decimals_because": "largest number of decimals in the column of the report, or of its batch",
         "alternatives": [
             "index made from another TOC, from unrounded, blank-corrected or averaged values", "slip in the index",

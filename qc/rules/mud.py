@@ -1,5 +1,7 @@
 """Which drilling fluid a sample was cut under."""
 
+from typing import Any
+
 import numpy as np
 import pandas as pd
 
@@ -12,6 +14,7 @@ OILY = frozenset({"oil", "synthetic"})
 def under_oil_based(table: Table, rows: pd.DataFrame) -> Bools:
     """Rows from an interval drilled with an oil- or synthetic-based fluid; False where the fluid is unknown."""
     found = np.zeros(len(rows), dtype=bool)
+    mud: Any
     for mud in table.muds.itertuples():
         if mud.kind in OILY:
             found |= inside(rows, mud.well, mud.top_m, mud.base_m)

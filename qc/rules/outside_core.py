@@ -2,6 +2,7 @@
 
 from typing import Any
 
+import numpy as np
 import pandas as pd
 
 from qc.rules.rule import CANNOT_EVALUATE, FIRE, NOT_APPLICABLE, PASS, WARN, Answer, Finding, Rule
@@ -48,7 +49,7 @@ def _finding(sample: pd.Series, row: int, runs: pd.DataFrame, tolerance: float) 
     away = pd.concat([(runs["top_m"] - depth).clip(lower=0), (depth - runs["base_m"]).clip(lower=0)], axis=1).max(
         axis=1
     )
-    near = runs.loc[away.astype(float).idxmin()]
+    near = runs.iloc[int(np.argmin(away.to_numpy(dtype=float)))]
     text = f"{depth:.2f} m is in no core run; the nearest is core {near['number']:.0f}, {near['top_m']:.2f}-{near['base_m']:.2f} m."
     more = {
         "alternatives": ["depth shifted to the log", "run not recorded", "typing error"],

@@ -5,7 +5,7 @@ import pandas as pd
 
 from qc.rules.facts import made_or_reported, not_rock, production_index, sandstone, valid_tmax
 from qc.rules.rule import WARN, Answer, Finding, Rule, fired, judge, say
-from qc.rules.spans import Floats, exact, span
+from qc.rules.spans import Floats, exact, line, num, span
 from qc.rules.table import Table
 
 STAGES = ("immature", "early mature", "peak mature", "late mature")
@@ -39,11 +39,11 @@ def check(
     known = enough_known & ~np.isnan(pi) & ~np.isnan(limit)
     outcome = judge(rows.index, applies=~little & ~not_rock(rows) & ~sandstone(rows), known=known, fires=fires)
     facts = pd.DataFrame({"pi": pi, "limit": limit, "stage": stages, "by_tmax": ~np.isnan(by_tmax)}, index=rows.index)
-    return Answer(outcome, [_finding(rows, facts.loc[row], row) for row in fired(outcome)])
+    return Answer(outcome, [_finding(rows, line(facts, row), row) for row in fired(outcome)])
 
 
 def _finding(rows: pd.DataFrame, fact: pd.Series, row: int) -> Finding:
-    measure = f"Tmax {say(rows.at[row, 'TMAX'])} °C" if fact["by_tmax"] else f"Ro {say(rows.at[row, 'RO'])} %"
+    measure = f"Tmax {say(num(rows, row, 'TMAX'))} °C" if fact["by_tmax"] else f"Ro {say(num(rows, row, 'RO'))} %"
     name = STAGES[int(fact["stage"])]
     text = f"PI {say(fact['pi'])} is above {say(fact['limit'])}, the most expected of {name} rock ({measure})."
     more = {

@@ -6,7 +6,7 @@ import pandas as pd
 from qc.rules.facts import made_or_reported, not_rock, production_index
 from qc.rules.robust import MEAN_DEVIATION, NORMAL
 from qc.rules.rule import WARN, Answer, Finding, Rule, fired, judge, say
-from qc.rules.spans import Floats, exact
+from qc.rules.spans import Floats, exact, line
 from qc.rules.table import Table
 
 WINDOW = 10  # neighbours looked at: five above and five below, fewer where the unit is small
@@ -29,7 +29,7 @@ def check(table: Table, *, neighbours_min: int, scores: float, tmax_scale_min: f
     known = facts[["pi", "tmax"]].notna().all(axis=1)
     enough = facts["neighbours"] >= neighbours_min
     outcome = judge(rows.index, applies=~not_rock(rows) & (enough | ~known), known=known, fires=fires)
-    return Answer(outcome, [_finding(rows, facts.loc[row], row) for row in fired(outcome)])
+    return Answer(outcome, [_finding(rows, line(facts, row), row) for row in fired(outcome)])
 
 
 def _units(rows: pd.DataFrame, facts: pd.DataFrame) -> list[tuple[object, pd.Index]]:

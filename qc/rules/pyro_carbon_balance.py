@@ -5,7 +5,7 @@ import pandas as pd
 
 from qc.rules.facts import not_rock
 from qc.rules.rule import REJECT, WARN, Answer, Finding, Rule, fired, judge, say
-from qc.rules.spans import span
+from qc.rules.spans import line, span
 from qc.rules.table import Table
 
 
@@ -40,7 +40,7 @@ def check(
 
 
 def _finding(rows: pd.DataFrame, row: int, factor: float, floor: float) -> Finding:
-    one = rows.loc[row]
+    one = line(rows, row)
     pc = factor * (one["S1"] + one["S2"])
     full = full_cycle_carbon(one["S1"], one["S2"], float(np.nan_to_num(one["S3"])))
     split = one["TOC_row"] != row and one["TOC_row"] >= 0

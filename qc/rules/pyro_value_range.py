@@ -6,7 +6,7 @@ import numpy as np
 import pandas as pd
 
 from qc.rules.rule import REJECT, WARN, Answer, Finding, Rule, fired, judge, merge, say
-from qc.rules.spans import Bools, reported, span
+from qc.rules.spans import Bools, num, reported, span, word
 from qc.rules.table import Table
 
 PEAKS = ("S1", "S2", "S3")
@@ -49,7 +49,7 @@ def _limit_stated(rows: pd.DataFrame, analyte: str) -> Bools:
 
 
 def _finding(rows: pd.DataFrame, row: int, limits: Range) -> Finding:
-    value = float(rows.at[row, limits.analyte])
+    value = num(rows, row, limits.analyte)
     name = limits.analyte
     if value == 0 and limits.low == 0:
         text, severity = (
@@ -60,7 +60,7 @@ def _finding(rows: pd.DataFrame, row: int, limits: Range) -> Finding:
     else:
         bounds = f"{say(limits.low)} to {say(limits.high)}" if np.isfinite(limits.high) else f"{say(limits.low)} and up"
         text, severity = (
-            f"{name} {rows.at[row, f'{name}_text'] or say(value)} is outside what is possible ({bounds}).",
+            f"{name} {word(rows, row, f'{name}_text') or say(value)} is outside what is possible ({bounds}).",
             REJECT,
         )
         other = ["typing error", "value of another column", "missing-value code read as a number"]
@@ -76,8 +76,8 @@ def _sum_in_range(rows: pd.DataFrame, hydrocarbon_max: float) -> Answer:
     outcome = judge(rows.index, applies=both & ~alone, known=known, fires=fires)
     findings = [
         Finding(
-            row, "S2", REJECT, f"S1 + S2 is {say(rows.at[row, 'S1'] + rows.at[row, 'S2'])} mg/g, more than the rock itself.",
-            ("S1", "S2"), float(rows.at[row, "S1"] + rows.at[row, "S2"]), hydrocarbon_max,
+            row, "S2", REJECT, f"S1 + S2 is {say(num(rows, row, 'S1') + num(rows, row, 'S2'))} mg/g, more than the rock itself.",
+            ("S1", "S2"), float(num(rows, row, "S1") + num(rows, row, "S2")), hydrocarbon_max,
             more={"alternatives": ["unit slip"], "discriminating_test": "read the cells in the laboratory's own file"},
         )
         for row in fired(outcome)
@@ -109,7 +109,7 @@ def _copy_finding(rows: pd.DataFrame, row: int, other: int) -> Finding:
         "alternatives": ["line copied", "duplicate measurement not flagged as one", "coincidence of small values"],
         "discriminating_test": "ask the laboratory for the two traces",
     }
-    return Finding(row, "S2", WARN, text, PEAKS, float(rows.at[row, "S2"]), None, rows=(other,), more=more)
+    return Finding(row, "S2", WARN, text, PEAKS, num(rows, row, "S2"), None, rows=(other,), more=more)
 
 
 RULE = Rule(

@@ -5,7 +5,7 @@ import pandas as pd
 
 from qc.rules.facts import hydrogen_index, valid_tmax
 from qc.rules.rule import WARN, Answer, Finding, Rule, fired, judge, say
-from qc.rules.spans import Floats, exact, reported
+from qc.rules.spans import Floats, exact, line, num, reported
 from qc.rules.table import Table
 
 
@@ -33,13 +33,13 @@ def check(
     known = ~np.isnan(tmax) & ~np.isnan(ro) & ~np.isnan(hi)
     applies = reported(rows, "RO") & reported(rows, "TMAX") & ~outside_range & ~small
     outcome = judge(rows.index, applies=applies, known=known, fires=fires.to_numpy() & known)
-    return Answer(outcome, [_finding(rows, facts.loc[row], row, list(schemes)) for row in fired(outcome)])
+    return Answer(outcome, [_finding(rows, line(facts, row), row, list(schemes)) for row in fired(outcome)])
 
 
 def _finding(rows: pd.DataFrame, fact: pd.Series, row: int, schemes: list[str]) -> Finding:
     low = fact["ro"] < fact["low"]
     text = (
-        f"Ro {say(fact['ro'])} % is {'below' if low else 'above'} what Tmax {say(rows.at[row, 'TMAX'])} °C gives "
+        f"Ro {say(fact['ro'])} % is {'below' if low else 'above'} what Tmax {say(num(rows, row, 'TMAX'))} °C gives "
         f"({', '.join(f'{name} {fact[name]:.3f}' for name in schemes)})."
     )
     causes = (

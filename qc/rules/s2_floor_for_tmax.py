@@ -3,7 +3,7 @@
 import pandas as pd
 
 from qc.rules.rule import REJECT, WARN, Answer, Finding, Rule, fired, judge, merge, say
-from qc.rules.spans import reported, span
+from qc.rules.spans import num, reported, span, word
 from qc.rules.table import Table
 
 
@@ -23,7 +23,7 @@ def check(table: Table, *, s2_min: float, s2_warn: float, hydrocarbon_min: float
 def _tmax(rows: pd.DataFrame, row: int, certain: bool, s2_min: float, s2_warn: float) -> Finding:
     limit = s2_min if certain else s2_warn
     text = (
-        f"Tmax {say(rows.at[row, 'TMAX'])} °C was read from an S2 of {rows.at[row, 'S2_q']}{say(rows.at[row, 'S2'])} mg/g, "
+        f"Tmax {say(num(rows, row, 'TMAX'))} °C was read from an S2 of {word(rows, row, 'S2_q')}{say(num(rows, row, 'S2'))} mg/g, "
         f"below {say(limit)}."
     )
     more = {
@@ -31,13 +31,13 @@ def _tmax(rows: pd.DataFrame, row: int, certain: bool, s2_min: float, s2_warn: f
         "discriminating_test": "look at the S2 trace; vitrinite reflectance",
     }
     return Finding(
-        row, "TMAX", REJECT if certain else WARN, text, ("TMAX", "S2"), float(rows.at[row, "S2"]), limit, more=more
+        row, "TMAX", REJECT if certain else WARN, text, ("TMAX", "S2"), num(rows, row, "S2"), limit, more=more
     )
 
 
 def _pi(rows: pd.DataFrame, row: int, limit: float) -> Finding:
-    total = rows.at[row, "S1"] + rows.at[row, "S2"]
-    text = f"PI {say(rows.at[row, 'PI'])} is made of S1 + S2 = {say(total)} mg/g, below {say(limit)}."
+    total = num(rows, row, "S1") + num(rows, row, "S2")
+    text = f"PI {say(num(rows, row, 'PI'))} is made of S1 + S2 = {say(total)} mg/g, below {say(limit)}."
     more = {"alternatives": ["lean or post-mature rock"], "discriminating_test": "duplicate pyrolysis"}
     return Finding(row, "PI", WARN, text, ("PI", "S1", "S2"), round(float(total), 4), limit, more=more)
 

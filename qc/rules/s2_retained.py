@@ -5,6 +5,7 @@ import pandas as pd
 
 from qc.rules.rule import FIRE, INFO, NOT_APPLICABLE, PASS, Answer, Finding, Rule, say
 from qc.rules.s2_toc import Fit
+from qc.rules.spans import num
 from qc.rules.table import Table
 
 
@@ -24,7 +25,7 @@ def check(table: Table, *, retained_min: float) -> Answer:
         if before is None or before.outcome[first] != FIRE:
             continue
         for row in fit.rows:
-            amount, share = retained(rows.at[row, "TOC"], rows.at[row, "S2"], fit.line.slope)
+            amount, share = retained(num(rows, row, "TOC"), num(rows, row, "S2"), fit.line.slope)
             held = amount > retained_min
             outcome[row] = FIRE if held else PASS
             if held:
@@ -37,7 +38,7 @@ def _finding(rows: pd.DataFrame, row: int, fit: Fit, amount: float, share: float
         f"{say(amount)} mg/g of S2 ({share:.0f} %) is missing against a kerogen of HI {100 * fit.line.slope:.0f}: held back by the "
         f"rock, or the carbon is dead."
     )
-    illite = rows.at[row, "ILLITE"]
+    illite = num(rows, row, "ILLITE")
     more = {
         "fit": {"slope": round(fit.line.slope, 4), "intercept": round(fit.line.intercept, 4), "n": len(fit.x)},
         "retained_percent": round(share, 1),
@@ -45,7 +46,7 @@ def _finding(rows: pd.DataFrame, row: int, fit: Fit, amount: float, share: float
         "alternatives": ["S2 held back by clay: illite > smectite > kaolinite, chlorite > carbonate", "inert carbon"],
         "discriminating_test": "pyrolysis of the kerogen isolate; XRD of the clays",
     }
-    full = round(float(fit.line.slope * rows.at[row, "TOC"]), 4)
+    full = round(float(fit.line.slope * num(rows, row, "TOC")), 4)
     return Finding(row, "S2", INFO, text, ("S2", "TOC"), round(float(amount), 4), full, more=more)
 
 

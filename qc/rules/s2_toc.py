@@ -155,7 +155,7 @@ def evidence(fit: Fit, table: Table) -> dict[str, Any]:
     step = max(1, -(-len(fit.x) // POINTS_SHOWN))
     ends = fit.ends
     excluded = [f"{table.name(row)}: {why}" for row, why in list(fit.excluded.items())[:12]]
-    drawn = {
+    drawn: dict[str, Any] = {
         "x": [round(float(value), 3) for value in fit.x[::step]],
         "y": [round(float(value), 3) for value in fit.y[::step]],
         "n": len(fit.x), "points_shown": len(fit.x[::step]),

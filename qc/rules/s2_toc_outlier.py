@@ -6,6 +6,7 @@ import pandas as pd
 from qc.rules.robust import madn
 from qc.rules.rule import NOT_APPLICABLE, WARN, Answer, Finding, Rule, fired, judge, say
 from qc.rules.s2_toc import Fit, evidence
+from qc.rules.spans import line, num
 from qc.rules.table import Table
 
 
@@ -26,7 +27,7 @@ def check(table: Table, *, z_max: float, samples_min: int, residual_min: float, 
         fires = (residuals["z"].abs() > z_max) & (residuals["residual"].abs() > matters)
         judged = judge(residuals.index, applies=True, known=residuals["z"].notna(), fires=fires)
         outcome[judged.index] = judged
-        findings += [_finding(table, fit, residuals.loc[row], row, z_max) for row in fired(judged)]
+        findings += [_finding(table, fit, line(residuals, row), row, z_max) for row in fired(judged)]
     return Answer(outcome, sorted(findings, key=lambda finding: finding.row or 0))
 
 
@@ -45,8 +46,8 @@ def _finding(table: Table, fit: Fit, one: pd.Series, row: int, z_max: float) -> 
     rows = table.rows
     low = one["residual"] < 0
     text = (
-        f"S2 of {say(rows.at[row, 'S2'])} mg/g lies {say(abs(one['residual']))} {'below' if low else 'above'} the S2-TOC line of its unit "
-        f"({say(one['predicted'])} expected at TOC {say(rows.at[row, 'TOC'])}; z {one['z']:.1f})."
+        f"S2 of {say(num(rows, row, 'S2'))} mg/g lies {say(abs(one['residual']))} {'below' if low else 'above'} the S2-TOC line of its unit "
+        f"({say(one['predicted'])} expected at TOC {say(num(rows, row, 'TOC'))}; z {one['z']:.1f})."
     )
     low_causes = ["inert or oxidised carbon", "TOC of another sample", "slip in S2 or TOC"]
     drawn = evidence(fit, table)

@@ -1,12 +1,14 @@
 """Carbonate that decomposes within S3 and raises OI."""
 
+from typing import Any
+
 import numpy as np
 import pandas as pd
 from scipy import stats
 
 from qc.rules.facts import made_or_reported, positive, says
 from qc.rules.rule import WARN, Answer, Finding, Rule, fired, judge, say
-from qc.rules.spans import Floats, exact, span
+from qc.rules.spans import Floats, exact, line, num, span, word
 from qc.rules.table import Table
 
 CALCITE_PER_CARBON = 8.333  # CaCO3 for one part of inorganic carbon, by atomic masses
@@ -44,14 +46,14 @@ def check(
     outcome = judge(rows.index, applies=applies & ~no_rule, known=known, fires=fires)
     facts["rho"] = rows["well"].map(_rank_correlation(rows, facts)).astype(float)
     limits = {"lean": toc_min, "high": oi_max, "with_carbonate": carbonate_max, "with_siderite": siderite_max}
-    return Answer(outcome, [_finding(rows, facts.loc[row], row, limits, rank_correlation) for row in fired(outcome)])
+    return Answer(outcome, [_finding(rows, line(facts, row), row, limits, rank_correlation) for row in fired(outcome)])
 
 
-def _rank_correlation(rows: pd.DataFrame, facts: pd.DataFrame) -> dict[int, float]:
+def _rank_correlation(rows: pd.DataFrame, facts: pd.DataFrame) -> dict[Any, float]:
     """Spearman's rho of S3 with carbonate a well, where at least 8 samples have both."""
     both = pd.DataFrame({"well": rows["well"], "s3": exact(rows, "S3"), "carbonate": facts["carbonate"]}).dropna()
     return {
-        int(well): float(stats.spearmanr(group["s3"], group["carbonate"]).statistic)
+        well: float(stats.spearmanr(group["s3"], group["carbonate"]).statistic)
         for well, group in both.groupby("well")
         if len(group) >= 8 and group["s3"].nunique() > 1 and group["carbonate"].nunique() > 1
     }
@@ -59,7 +61,7 @@ def _rank_correlation(rows: pd.DataFrame, facts: pd.DataFrame) -> dict[int, floa
 
 def _finding(rows: pd.DataFrame, fact: pd.Series, row: int, limits: dict[str, float], strong: float) -> Finding:
     reasons = {
-        "lean": f"TOC {rows.at[row, 'TOC_q']}{say(rows.at[row, 'TOC'])} wt% is below {say(limits['lean'])}",
+        "lean": f"TOC {word(rows, row, 'TOC_q')}{say(num(rows, row, 'TOC'))} wt% is below {say(limits['lean'])}",
         "high": f"OI is above {say(limits['high'])}",
         "with_carbonate": f"{say(fact['carbonate'])} wt% carbonate stands with it",
         "with_siderite": f"{say(fact['siderite'])} wt% siderite stands with it",

@@ -96,3 +96,18 @@ def censored(rows: pd.DataFrame, analyte: str) -> Bools:
 def reported(rows: pd.DataFrame, analyte: str) -> Bools:
     """Where the laboratory reported anything at all, be it a bound of unknown size."""
     return rows[f"{analyte}_id"].to_numpy() >= 0
+
+
+def num(rows: pd.DataFrame, row: int, column: str) -> float:
+    """One cell as a number; NaN where it is empty."""
+    return float(rows.at[row, column])  # type: ignore[arg-type]
+
+
+def word(rows: pd.DataFrame, row: int, column: str) -> str:
+    """One cell as text."""
+    return str(rows.at[row, column])
+
+
+def line(rows: pd.DataFrame, row: int) -> pd.Series:
+    """One row."""
+    return rows.loc[row]  # type: ignore[return-value]

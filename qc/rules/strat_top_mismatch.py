@@ -1,6 +1,7 @@
 """The formation stated is the formation at that depth."""
 
 import re
+from typing import Any
 
 import pandas as pd
 
@@ -23,7 +24,7 @@ def check(table: Table, *, tolerance: float) -> Answer:
     stated = samples[samples["formation"].ne("")]
     outcome[stated.index] = CANNOT_EVALUATE
     for well, group in stated.groupby("well", sort=True):
-        tops = current(table.tops, int(well))
+        tops = current(table.tops, well)
         if tops.empty:
             continue
         for row in group.index:
@@ -33,7 +34,7 @@ def check(table: Table, *, tolerance: float) -> Answer:
     return Answer(outcome, findings)
 
 
-def current(tops: pd.DataFrame, well: int) -> pd.DataFrame:
+def current(tops: pd.DataFrame, well: Any) -> pd.DataFrame:
     """The well's tops of the last version, from the top down."""
     own = tops[tops["well"] == well]
     if own.empty:

@@ -14,6 +14,7 @@ import numpy as np
 import pandas as pd
 
 from qc.rules.rule import Answer
+from qc.rules.spans import num, word
 
 UNITS = {
     "TOC": "wt%", "TIC": "wt%", "TC": "wt%", "CARB": "wt%", "MINC": "wt%", "S1": "mg/g", "S2": "mg/g", "S3": "mg/g",
@@ -68,9 +69,9 @@ class Table:
 
     def name(self, row: int) -> str:
         """The sample as people call it."""
-        label, top = self.rows.at[row, "label"], self.rows.at[row, "top_m"]
+        label, top = word(self.rows, row, "label"), num(self.rows, row, "top_m")
         depth = "" if np.isnan(top) else f"{top:.2f} m"
-        return " at ".join(part for part in (label, depth) if part) or f"line {self.rows.at[row, 'line']}"
+        return " at ".join(part for part in (label, depth) if part) or f"line {num(self.rows, row, 'line'):.0f}"
 
 
 def frame(columns: Mapping[str, object], size: int) -> pd.DataFrame:

@@ -4,7 +4,7 @@ import numpy as np
 import pandas as pd
 
 from qc.rules.rule import REJECT, WARN, Answer, Finding, Rule, fired, judge, say
-from qc.rules.spans import Bools, exact, reported, span
+from qc.rules.spans import Bools, exact, num, reported, span
 from qc.rules.table import Table
 
 
@@ -38,7 +38,7 @@ def _overmature(rows: pd.DataFrame, ro_min: float, median_min: float, neighbours
 
 def _finding(rows: pd.DataFrame, row: int, limits: tuple[float, float, float, float]) -> Finding:
     warn_below, warn_above, reject_below, reject_above = limits
-    tmax = float(rows.at[row, "TMAX"])
+    tmax = num(rows, row, "TMAX")
     reject = tmax < reject_below or tmax > reject_above
     low = tmax < warn_below
     limit = (reject_below if reject else warn_below) if low else (reject_above if reject else warn_above)

@@ -4,7 +4,7 @@ import numpy as np
 import pandas as pd
 
 from qc.rules.rule import WARN, Answer, Finding, Rule, fired, judge, merge, say
-from qc.rules.spans import Floats, exact, reported, span
+from qc.rules.spans import Floats, exact, num, reported, span, word
 from qc.rules.table import Table
 
 TOPS = {"HI": "S2", "OI": "S3", "OSI": "S1"}
@@ -44,8 +44,8 @@ def _finding(
     rows: pd.DataFrame, row: int, index: str, facts: pd.DataFrame, limits: tuple[float, float, float]
 ) -> Finding:
     toc_min, toc_warn, relative_max = limits
-    toc, spread, value = rows.at[row, "TOC"], facts.at[row, "spread"], rows.at[row, index]
-    shown = f"{rows.at[row, 'TOC_q']}{say(toc)}"
+    toc, spread, value = num(rows, row, "TOC"), num(facts, row, "spread"), num(rows, row, index)
+    shown = f"{word(rows, row, 'TOC_q')}{say(toc)}"
     more: dict[str, object] = {
         "alternatives": ["a lean carbonate low in clay may be valid down to about 0.2 wt% if duplicates agree"],
         "discriminating_test": "duplicate pyrolysis and TOC; use the S2-TOC plot of the unit instead of single indices",
@@ -55,7 +55,7 @@ def _finding(
         more["interval"] = [round(float(value * (1 - spread)), 1), round(float(value * (1 + spread)), 1)]
     if toc < toc_min:
         text = f"{index} is not for interpretation: TOC {shown} wt% is below {say(toc_min)}"
-    elif toc < toc_warn or rows.at[row, "TOC_q"] == "<":
+    elif toc < toc_warn or word(rows, row, "TOC_q") == "<":
         text = f"{index} is doubtful: TOC {shown} wt% is below {say(toc_warn)}"
     else:
         text = f"{index} is uncertain by {100 * spread:.1f} %, more than {100 * relative_max:.0f} %"

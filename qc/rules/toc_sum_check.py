@@ -4,7 +4,7 @@ import numpy as np
 import pandas as pd
 
 from qc.rules.rule import WARN, Answer, Finding, Rule, fired, judge, say
-from qc.rules.spans import exact, reported
+from qc.rules.spans import exact, num, reported
 from qc.rules.table import Table
 
 PARTS = ("TOC", "PC", "RC")
@@ -25,16 +25,16 @@ def check(table: Table, *, slack: float) -> Answer:
 
 
 def _finding(rows: pd.DataFrame, sums: pd.DataFrame, row: int) -> Finding:
-    residual, limit = sums.loc[row, "residual"], sums.loc[row, "limit"]
+    residual, limit = num(sums, row, "residual"), num(sums, row, "limit")
     text = (
-        f"TOC {say(rows.at[row, 'TOC'])} is not PC {say(rows.at[row, 'PC'])} + RC {say(rows.at[row, 'RC'])}: "
+        f"TOC {say(num(rows, row, 'TOC'))} is not PC {say(num(rows, row, 'PC'))} + RC {say(num(rows, row, 'RC'))}: "
         f"{say(residual)} wt% remain, rounding explains {say(limit)}."
     )
     more = {
         "alternatives": ["slip in one of the three", "TOC from another determination"],
         "discriminating_test": "ask the laboratory which determination TOC is from",
     }
-    return Finding(row, "TOC", WARN, text, PARTS, round(float(residual), 6), round(float(limit), 6), more=more)
+    return Finding(row, "TOC", WARN, text, PARTS, round(residual, 6), round(limit, 6), more=more)
 
 
 RULE = Rule(

@@ -5,7 +5,7 @@ import pandas as pd
 from scipy import stats
 
 from qc.rules.rule import REJECT, WARN, Answer, Finding, Rule, fired, judge, merge, say
-from qc.rules.spans import exact, reported
+from qc.rules.spans import exact, num, reported
 from qc.rules.table import Table
 
 
@@ -36,9 +36,9 @@ def check(table: Table, *, n_min: int, n_desirable: int, sd_floor: float, sd_slo
 
 
 def _few(rows: pd.DataFrame, row: int, n_min: int, n_desirable: int) -> Finding:
-    n, sd = rows.at[row, "RO_N"], rows.at[row, "RO_SD"]
+    n, sd = num(rows, row, "RO_N"), num(rows, row, "RO_SD")
     limit = n_min if n < n_min else n_desirable
-    text = f"Ro {say(rows.at[row, 'RO'])} % is the mean of {say(n)} readings, fewer than {say(limit)}"
+    text = f"Ro {say(num(rows, row, 'RO'))} % is the mean of {say(n)} readings, fewer than {say(limit)}"
     half = half_width(sd, n)
     if np.isfinite(half):
         text += f" (95 % half-width ±{half:.3f})"
@@ -55,8 +55,8 @@ def _few(rows: pd.DataFrame, row: int, n_min: int, n_desirable: int) -> Finding:
 
 
 def _wide(rows: pd.DataFrame, row: int, limit: float) -> Finding:
-    sd = rows.at[row, "RO_SD"]
-    text = f"The readings of Ro {say(rows.at[row, 'RO'])} % spread by {say(sd)} %, more than {say(limit)} % of one population."
+    sd = num(rows, row, "RO_SD")
+    text = f"The readings of Ro {say(num(rows, row, 'RO'))} % spread by {say(sd)} %, more than {say(limit)} % of one population."
     more = {
         "alternatives": ["two populations: caved, reworked or bitumen", "poor polish"],
         "discriminating_test": "histogram of the readings",
@@ -65,14 +65,12 @@ def _wide(rows: pd.DataFrame, row: int, limit: float) -> Finding:
 
 
 def _astray(rows: pd.DataFrame, row: int) -> Finding:
-    low, high = rows.at[row, "RO_MIN"], rows.at[row, "RO_MAX"]
-    text = f"The mean Ro {say(rows.at[row, 'RO'])} % does not lie between its lowest ({say(low)}) and highest ({say(high)}) reading."
+    low, high = num(rows, row, "RO_MIN"), num(rows, row, "RO_MAX")
+    text = f"The mean Ro {say(num(rows, row, 'RO'))} % does not lie between its lowest ({say(low)}) and highest ({say(high)}) reading."
     more = {"alternatives": ["slip in the mean, lowest or highest reading", "columns of two samples mixed"],
             "discriminating_test": "ask the laboratory for the readings"}  # fmt: skip
     limit = [None if np.isnan(end) else float(end) for end in (low, high)]
-    return Finding(
-        row, "RO", REJECT, text, ("RO", "RO_MIN", "RO_MAX", "RO_N"), float(rows.at[row, "RO"]), limit, more=more
-    )
+    return Finding(row, "RO", REJECT, text, ("RO", "RO_MIN", "RO_MAX", "RO_N"), num(rows, row, "RO"), limit, more=more)
 
 
 RULE = Rule(
