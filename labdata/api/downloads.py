@@ -43,7 +43,11 @@ def send(request: Request, download: Download) -> HttpResponseBase:
         return HttpResponse(status=status, content_type=download.content_type, headers=headers)
     if part is None:
         return FileResponse(
-            download.file, as_attachment=True, filename=download.name, content_type=download.content_type, headers=headers
+            download.file,
+            as_attachment=True,
+            filename=download.name,
+            content_type=download.content_type,
+            headers=headers,
         )
     return StreamingHttpResponse(
         _blocks(download.file, start, end), status=status, content_type=download.content_type, headers=headers

@@ -95,7 +95,7 @@ class OneOf(django_filters.ChoiceFilter):
 
 
 class Rows(django_filters.FilterSet):
-    """The filters that most lists have; a list without one of them sets it to None.
+    """What can be asked of every list: the project, and what changed.
 
     ``paths`` leads from a row to what a filter looks at; ``many`` names those that lead to several rows.
     """
@@ -103,12 +103,6 @@ class Rows(django_filters.FilterSet):
     paths: Mapping[str, str] = {}
     many: frozenset[str] = frozenset()
     project = django_filters.CharFilter(method="by_project", label="Slug of the project.")
-    well = django_filters.CharFilter(method="by_well", label="Name, alias, UWI or id of the well.")
-    formation = django_filters.CharFilter(method="by_formation", label="Formation as reported.")
-    method = django_filters.CharFilter(method="by_method", label="Code of the method.")
-    analyte = django_filters.CharFilter(method="by_analyte", label="Code of the analyte.")
-    top_m__gte = Depth(method="by_top", label="Top of the sample at or below this depth [m MD].")
-    base_m__lte = Depth(method="by_base", label="Base of the sample at or above this depth [m MD].")
     changed_since = Moment(method="by_change", label="Made or changed at or after this time (ISO 8601).")
 
     @property
@@ -125,6 +119,15 @@ class Rows(django_filters.FilterSet):
     def by_project(self, rows: QuerySet[Any], name: str, slug: str) -> QuerySet[Any]:
         return self.narrow(rows, "project", "", self.caller.project(slug).pk)
 
+    def by_change(self, rows: QuerySet[Any], name: str, moment: datetime) -> QuerySet[Any]:
+        return self.narrow(rows, "changed", "__gte", moment)
+
+
+class RowsOfWells(Rows):
+    """Lists whose rows belong to wells."""
+
+    well = django_filters.CharFilter(method="by_well", label="Name, alias, UWI or id of the well.")
+
     def by_well(self, rows: QuerySet[Any], name: str, text: str) -> QuerySet[Any]:
         key = name_key(text)
         named = Q(name_key=key) | Q(uwi=text) | Q(aliases__name_key=key) | Q(identifiers__value=text)
@@ -134,6 +137,16 @@ class Rows(django_filters.FilterSet):
         if not found:
             raise ValidationError({"well": [f"There is no well «{text}»; GET /api/v1/wells lists them."]})
         return self.narrow(rows, "well", "__in", found)
+
+
+class RowsOfSamples(RowsOfWells):
+    """Lists whose rows belong to samples and what was measured on them."""
+
+    formation = django_filters.CharFilter(method="by_formation", label="Formation as reported.")
+    method = django_filters.CharFilter(method="by_method", label="Code of the method.")
+    analyte = django_filters.CharFilter(method="by_analyte", label="Code of the analyte.")
+    top_m__gte = Depth(method="by_top", label="Top of the sample at or below this depth [m MD].")
+    base_m__lte = Depth(method="by_base", label="Base of the sample at or above this depth [m MD].")
 
     def by_formation(self, rows: QuerySet[Any], name: str, text: str) -> QuerySet[Any]:
         return self.narrow(rows, "sample", "formation__iexact", text)
@@ -158,30 +171,25 @@ class Rows(django_filters.FilterSet):
         ends = rows.annotate(_base=Coalesce(F(f"{sample}base_md_m"), F(f"{sample}top_md_m")))
         return ends.filter(_base__lte=depth)
 
-    def by_change(self, rows: QuerySet[Any], name: str, moment: datetime) -> QuerySet[Any]:
-        return self.narrow(rows, "changed", "__gte", moment)
-
 
 class ProjectRows(Rows):
     paths = {"project": "pk", "changed": "created_at"}
-    well = formation = method = analyte = top_m__gte = base_m__lte = None
 
     class Meta:
         model = Project
         fields: list[str] = []
 
 
-class WellRows(Rows):
+class WellRows(RowsOfWells):
     paths = {"project": "project", "well": "pk", "changed": "samples__analyses__report__imported_at"}
     many = frozenset({"changed"})
-    formation = method = analyte = top_m__gte = base_m__lte = None
 
     class Meta:
         model = Well
         fields: list[str] = []
 
 
-class SampleRows(Rows):
+class SampleRows(RowsOfSamples):
     paths = {
         "project": "well__project", "well": "well", "sample": "", "method": "analyses__method__code",
         "analyte": "analyses__results__analyte__code", "changed": "analyses__report__imported_at",
@@ -193,7 +201,7 @@ class SampleRows(Rows):
         fields: list[str] = []
 
 
-class AnalysisRows(Rows):
+class AnalysisRows(RowsOfSamples):
     paths = {
         "project": "project", "well": "sample__well", "sample": "sample__", "method": "method__code",
         "analyte": "results__analyte__code", "changed": "report__imported_at",
@@ -254,7 +262,7 @@ def _an_id(name: str, number: Any) -> int:
     return int(number)
 
 
-class FlagRows(Rows):
+class FlagRows(RowsOfSamples):
     paths = {
         "project": "well__project", "well": "well", "sample": "analysis__sample__", "method": "analysis__method__code",
         "analyte": "analyte", "changed": "run__started_at",
@@ -278,7 +286,6 @@ class FlagRows(Rows):
 
 class UploadRows(Rows):
     paths = {"project": "project", "changed": "created_at"}
-    well = formation = method = analyte = top_m__gte = base_m__lte = None
     state = OneOf(Upload.Outcome.values, field_name="outcome", label="How the upload ended.")
 
     class Meta:
@@ -298,17 +305,16 @@ class RuleSetRows(django_filters.FilterSet):
         return rows.filter(Q(project=None) | Q(project=caller_of(self.request).project(slug)))
 
 
-class QcRunRows(Rows):
+class QcRunRows(RowsOfWells):
     paths = {"project": "project", "well": "wells", "changed": "started_at"}
     many = frozenset({"well"})
-    formation = method = analyte = top_m__gte = base_m__lte = None
 
     class Meta:
         model = QcRun
         fields: list[str] = []
 
 
-class DecisionRows(Rows):
+class DecisionRows(RowsOfSamples):
     paths = {
         "project": "review_set__project", "well": "review_set__well", "sample": "result__analysis__sample__",
         "method": "result__analysis__method__code", "analyte": "result__analyte__code", "changed": "decided_at",
@@ -325,9 +331,8 @@ class DecisionRows(Rows):
         return rows.filter(review_set=_an_id("review_set", number))
 
 
-class ReviewSetRows(Rows):
+class ReviewSetRows(RowsOfWells):
     paths = {"project": "project", "well": "well", "changed": "decisions__decided_at"}
-    formation = method = analyte = top_m__gte = base_m__lte = None
     state = OneOf(ReviewSetState.values, field_name="state", label="State of the review set.")
 
     class Meta:
@@ -342,9 +347,8 @@ class ReviewSetRows(Rows):
         return rows.filter(Q(created_at__gte=moment) | decided | signed)
 
 
-class SignOffRows(Rows):
+class SignOffRows(RowsOfWells):
     paths = {"project": "review_set__project", "well": "review_set__well", "changed": "signed_at"}
-    formation = method = analyte = top_m__gte = base_m__lte = None
     state = OneOf(["in_force", "reopened"], method="by_force", label="Whether the signature is in force.")
 
     class Meta:
@@ -357,7 +361,6 @@ class SignOffRows(Rows):
 
 class ReleaseRows(Rows):
     paths = {"project": "project"}
-    well = formation = method = analyte = top_m__gte = base_m__lte = None
     state = OneOf(["valid", "withdrawn"], method="by_state", label="Whether the release was withdrawn.")
 
     class Meta:
@@ -373,7 +376,6 @@ class ReleaseRows(Rows):
 
 class AuditRows(Rows):
     paths = {"project": "project", "changed": "at"}
-    well = formation = method = analyte = top_m__gte = base_m__lte = None
     action = django_filters.CharFilter(field_name="action", label="What was done, such as release.made.")
     actor = django_filters.CharFilter(field_name="actor_name", label="Who did it.")
 

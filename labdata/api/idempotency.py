@@ -6,6 +6,7 @@ from collections.abc import Callable
 from functools import partial, wraps
 from typing import Any
 
+from django.contrib.auth.models import User
 from django.core.files.uploadedfile import UploadedFile
 from django.db import IntegrityError, transaction
 from django.utils.crypto import salted_hmac
@@ -44,25 +45,22 @@ def once(handler: Handler) -> Handler:
             return handler(view, request, *args, **kwargs)
         if not (0 < len(key) <= KEY_LENGTH and key.isprintable()):
             raise ValidationError({"Idempotency-Key": [f"A key has 1 to {KEY_LENGTH} printable characters."]})
-        caller_of(request)
-        digest = _digest(request)
-        return _earlier(request, key, digest) or _first(
-            partial(handler, view, request, *args, **kwargs), request, key, digest
+        user, digest = caller_of(request).user, _digest(request)
+        return _earlier(user, key, digest) or _first(
+            partial(handler, view, request, *args, **kwargs), user, key, digest
         )
 
     return answer
 
 
-def _first(handler: Callable[[], Response], request: Request, key: str, digest: str) -> Response:
+def _first(handler: Callable[[], Response], user: User, key: str, digest: str) -> Response:
     refusal: Exception | None = None
     with transaction.atomic():
         try:
             with transaction.atomic():
-                held = IdempotencyRecord.objects.create(
-                    user_id=request.user.pk, key=key, request_sha256=digest, status=0, body={}
-                )
+                held = IdempotencyRecord.objects.create(user=user, key=key, request_sha256=digest, status=0, body={})
         except IntegrityError:  # the same request, sent twice at the same moment: the other one was first
-            replayed = _earlier(request, key, digest)
+            replayed = _earlier(user, key, digest)
             if replayed is None:
                 raise
             return replayed
@@ -81,9 +79,9 @@ def _first(handler: Callable[[], Response], request: Request, key: str, digest: 
     return response
 
 
-def _earlier(request: Request, key: str, digest: str) -> Response | None:
+def _earlier(user: User, key: str, digest: str) -> Response | None:
     """The answer given before. Raises KeyReused when the key came with something else."""
-    record = IdempotencyRecord.objects.filter(user_id=request.user.pk, key=key).first()
+    record = IdempotencyRecord.objects.filter(user=user, key=key).first()
     if record is None:
         return None
     if record.request_sha256 != digest:

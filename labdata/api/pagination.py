@@ -1,6 +1,7 @@
 """Lists by cursor: stable while rows are added."""
 
-from django.db.models import Model, QuerySet
+from typing import Any
+
 from rest_framework.exceptions import NotFound, ValidationError
 from rest_framework.pagination import Cursor, CursorPagination
 from rest_framework.request import Request
@@ -29,9 +30,9 @@ class ByIdCursor(CursorPagination):
         except NotFound:
             raise ValidationError({"cursor": ["This is no cursor that a list gave out."]}) from None
 
-    def paginate_queryset(self, queryset: QuerySet[Model], request: Request, view: object = None) -> list[Model] | None:
+    def paginate_queryset(self, queryset: Any, request: Request, view: Any = None) -> list[Any] | None:
         try:
-            page = super().paginate_queryset(queryset, request, view)  # type: ignore[arg-type]
+            page: list[Any] | None = super().paginate_queryset(queryset, request, view)
         except (ValueError, OverflowError):  # a position that is no id
             raise ValidationError({"cursor": ["This is no cursor that a list gave out."]}) from None
         return page

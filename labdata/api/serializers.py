@@ -314,14 +314,3 @@ class AuditOut(serializers.ModelSerializer[AuditEntry]):
             "seq", "at", "actor", "project", "action", "object_type", "object_id", "before", "after", "reason",
             "prev_hash", "hash",
         ]  # fmt: skip
-
-
-class ProblemOut(serializers.Serializer[Any]):
-    """RFC 9457. ``errors`` names fields; further members say where."""
-
-    type = serializers.CharField()
-    title = serializers.CharField()
-    status = serializers.IntegerField()
-    detail = serializers.CharField()
-    code = serializers.CharField()
-    errors = serializers.DictField(child=serializers.ListField(child=serializers.CharField()), required=False)

@@ -1,5 +1,7 @@
 """Addresses of the API. Each may also be written with a slash at its end."""
 
+from typing import Any
+
 from django.contrib.auth.decorators import login_not_required
 from django.http import HttpRequest, HttpResponseBase, JsonResponse
 from django.urls import Resolver404, URLPattern, path, re_path, resolve
@@ -11,11 +13,11 @@ from labdata.api.base import ReadView
 from labdata.api.problems import CONTENT_TYPE, problem
 from labdata.api.views import audit, intake, qc, registry, releases, review
 
-LIST = {"get": "list"}
-LIST_AND_POST = {"get": "list", "post": "create"}
+LIST: dict[str, Any] = {"get": "list"}
+LIST_AND_POST: dict[str, Any] = {"get": "list", "post": "create"}
 
 
-def _list(name: str, view: type[ReadView], actions: dict[str, str]) -> URLPattern:
+def _list(name: str, view: type[ReadView], actions: dict[str, Any]) -> URLPattern:
     return path(name, view.as_view(actions, detail=False), name=f"api-{name}")
 
 

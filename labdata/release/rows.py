@@ -41,7 +41,7 @@ def read(selection: Selection) -> pa.Table:
     """
     results = _results(selection)
     ours = Analyte.objects.filter(Q(project=None) | Q(project=selection.project)).order_by("order", "code", "pk")
-    analytes = list(ours.values("pk", "code", "unit", "inputs"))
+    analytes: list[dict[str, Any]] = [dict(row) for row in ours.values("pk", "code", "unit", "inputs")]
     analyses = _analyses(selection, results["analysis_id"].to_numpy())
     results = _in_order(results, analyses, analytes)
     table = _assemble(selection, results, analyses, analytes)

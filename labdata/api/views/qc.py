@@ -1,5 +1,7 @@
 """Rule sets and QC runs."""
 
+from typing import Any, cast
+
 from django.db.models import Q, QuerySet
 from drf_spectacular.utils import extend_schema, inline_serializer
 from rest_framework import serializers as fields
@@ -44,7 +46,8 @@ JOB = inline_serializer("QueuedJob", {"job": serializers.JobOut()})
 
 def wells_named(caller: Caller, project: Project, names: list[str]) -> list[Well]:
     """Wells of the project by name, UWI or id. Raises ValidationError naming each that is not there."""
-    wells, errors = [], {}
+    wells: list[Well] = []
+    errors: dict[int, Any] = {}
     for number, text in enumerate(names):
         named = Q(name_key=name_key(text)) | Q(uwi=text) | Q(aliases__name_key=name_key(text))
         if text.isascii() and text.isdigit() and len(text) < 19:
@@ -54,7 +57,7 @@ def wells_named(caller: Caller, project: Project, names: list[str]) -> list[Well
             errors[number] = [f"There is no well «{text}» in project «{project.slug}»."]
         wells += found
     if errors:
-        raise fields.ValidationError({"wells": errors})
+        raise fields.ValidationError({"wells": cast(Any, errors)})
     return wells
 
 

@@ -1,7 +1,7 @@
 """Review sets, decisions and signatures."""
 
 from collections import defaultdict
-from typing import Any
+from typing import Any, cast
 
 from django.db import transaction
 from django.db.models import Count, QuerySet
@@ -107,7 +107,7 @@ class Decisions(ListAndDetailView):
         """The choices by review set. Raises ValidationError naming what is not there or is of another set."""
         members = self._members(wanted)
         chosen: dict[int, list[Choice]] = defaultdict(list)
-        errors: dict[int, dict[str, list[str]]] = {}
+        errors: dict[int, Any] = {}
         for number, choice in enumerate(wanted):
             kind = "result" if "result" in choice else "analysis"
             found = members[kind].get(choice[kind], [])
@@ -119,7 +119,7 @@ class Decisions(ListAndDetailView):
             for review_set, result in found:
                 chosen[review_set].append(Choice(result, choice["verdict"], choice["reason"], choice["text"]))
         if errors:
-            raise fields.ValidationError({"decisions": errors})
+            raise fields.ValidationError({"decisions": cast(Any, errors)})
         return chosen
 
     def _members(self, wanted: list[dict[str, Any]]) -> dict[str, dict[int, list[tuple[int, int]]]]:
