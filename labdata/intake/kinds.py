@@ -40,12 +40,12 @@ def role_of(text: str) -> str:
 
 
 def reference_name(label: str) -> str:
-    """The material's name: the label without the word that marks it, unless nothing is left."""
-    plain = label
+    """The material's name: the label without the word that marks it, unless next to nothing is left."""
+    plain = label.strip()
     for word, role in _role_words():
         if role == "reference":
-            shorter = re.sub(rf"^\s*{re.escape(word)}\b[\s:_\-.]*", "", plain, flags=re.I)
+            shorter = re.sub(rf"^{re.escape(word)}\b[\s:_\-.]*", "", plain, flags=re.I).strip()
             if shorter != plain:
-                plain = shorter
+                plain = shorter if len(shorter) >= 3 else plain
                 break
-    return (plain.strip() or label.strip() or "reference material")[:120]
+    return (plain or "reference material")[:120]

@@ -287,7 +287,7 @@ class RowReader:
                 row,
                 text,
                 code="depth_too_deep",
-                message=f"Depth «{text}» {unit or '(no unit)'} is {depth:,.0f} m, deeper than any well.",
+                message=f"Depth «{text}» is {depth:,.0f} m{' (read as feet)' if unit == 'ft' else ''}, deeper than any well.",
                 remedy="Check the unit of the depth column (m or ft).",
             )
         else:

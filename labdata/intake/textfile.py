@@ -50,13 +50,23 @@ def read_rows(name: str, content: bytes) -> tuple[list[list[str]], str]:
     if delimiter == " ":
         return [re.split(r"\s{2,}|\t", line.strip()) if line.strip() else [] for line in text.split("\n")], delimiter
     try:
-        return list(csv.reader(io.StringIO(text, newline=""), delimiter=delimiter)), delimiter
+        return _split(text, delimiter), delimiter
     except csv.Error as trouble:
         raise UnreadableFile(
-            f"«{name}» breaks off inside a quoted cell or has a cell that is too long ({trouble}).",
+            f"«{name}» breaks off inside a quoted cell ({trouble}).",
             remedy="Look for an unpaired quotation mark.",
             file=name,
         ) from trouble
+
+
+def _split(text: str, delimiter: str) -> list[list[str]]:
+    """Rows of cells. A quote that is never closed is an error; other untidy quoting is taken as it stands."""
+    try:
+        return list(csv.reader(io.StringIO(text, newline=""), delimiter=delimiter, strict=True))
+    except csv.Error as trouble:
+        if "end of data" in str(trouble) or "field larger" in str(trouble):
+            raise
+        return list(csv.reader(io.StringIO(text, newline=""), delimiter=delimiter))
 
 
 def sniff(text: str) -> str:

@@ -64,6 +64,10 @@ def read_title(lines: list[list[str]]) -> Facts:
             _take(facts, key, value)
     for text in facts.lines:
         _take_prose(facts, text)
+    if facts.report:
+        facts.report, revision, amended = split_version(facts.report)
+        facts.revision = revision if facts.revision is None else facts.revision
+        facts.amended = facts.amended or amended
     return facts
 
 
@@ -136,12 +140,16 @@ def read_date(text: str) -> date | None:
 def split_file_name(name: str) -> tuple[str, int | None, bool]:
     """(report number, revision, amended) as the file's name tells: ``KG-17_rev2.xlsx`` is (``KG-17``, 2, False)."""
     stem = PurePath(name).name
-    stem = re.sub(r"\.(?:xlsx|xlsm|xlsb|xls|ods|csv|tsv|txt)$", "", stem, flags=re.I)
+    return split_version(re.sub(r"\.(?:xlsx|xlsm|xlsb|xls|ods|csv|tsv|txt)$", "", stem, flags=re.I))
+
+
+def split_version(number: str) -> tuple[str, int | None, bool]:
+    """(number, revision, amended) of a report number that carries its version: ``KG-17 Rev 2``, ``KG-17 (amended)``."""
     revision, amended = None, False
-    if match := _VERSION.search(stem):
+    if match := _VERSION.search(number):
         revision = int(match.group(1))
         amended = "amend" in match.group(0).casefold()
-        stem = (stem[: match.start()] + stem[match.end() :]).strip(" _-.()") or stem
-    if (match := _NAMED_AMENDED.search(stem)) and match.start():
-        stem, amended = stem[: match.start()], True
-    return stem[:120], revision, amended
+        number = (number[: match.start()] + number[match.end() :]).strip(" _-.(),;") or number
+    if (match := _NAMED_AMENDED.search(number)) and match.start():
+        number, amended = number[: match.start()], True
+    return number[:120], revision, amended
