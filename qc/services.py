@@ -13,7 +13,7 @@ from labdata.access import Action, require
 from labdata.errors import InvalidInput
 from labdata.jobs import JobContext, enqueue
 from labdata.models import Job, Project, Well
-from qc.models import Flag, QcRun, QcRunWell, RuleSet
+from qc.models import Flag, FlagAnswer, QcRun, QcRunWell, RuleSet
 from qc.rules import RULES
 from qc.rules.engine import parameters, run
 from qc.rules.evidence import Witness
@@ -96,12 +96,21 @@ def _batches(wells: Sequence[Well], mark: Mark) -> Iterator[list[Well]]:
 def _check(wells: list[Well], rule_set: RuleSet, counts: dict[str, dict[str, int]], ctx: JobContext) -> list[Flag]:
     """Flags of one batch, in order; outcomes are added to ``counts``."""
     table = read(wells)
-    answers = run(table, rule_set.thresholds, rule_set.disabled, step=lambda rule: ctx.tick(note=rule))
+    answers = run(
+        table, rule_set.thresholds, rule_set.disabled, dismissed(wells), step=lambda rule: ctx.tick(note=rule)
+    )  # fmt: skip
     for rule, answer in answers.items():
         so_far = counts.setdefault(rule, dict.fromkeys(OUTCOMES, 0))
         for outcome, number in answer.counts().items():
             so_far[outcome] += number
     return flags_of(table, wells, answers, rule_set)
+
+
+def dismissed(wells: Iterable[Well]) -> set[str]:
+    """Fingerprints of flags whose latest answer is a dismissal."""
+    given = FlagAnswer.objects.filter(review_set__well__in=[well.pk for well in wells]).order_by("id")
+    latest = dict(given.values_list("fingerprint", "answer"))
+    return {fingerprint for fingerprint, answer in latest.items() if answer == FlagAnswer.Answer.DISMISSED}
 
 
 def flags_of(table: Table, wells: Sequence[Well], answers: dict[str, Answer], rule_set: RuleSet) -> list[Flag]:

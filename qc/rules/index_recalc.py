@@ -1,11 +1,11 @@
 """Reported indices must follow from reported peaks."""
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 import pandas as pd
 
-from qc.rules.rule import REJECT, WARN, Answer, Finding, Rule, fired, judge, merge, say
+from qc.rules.rule import PASS, REJECT, WARN, Answer, Finding, Rule, fired, judge, merge, say
 from qc.rules.spans import Bools, Span, censored, line, num, reported, span
 from qc.rules.table import Table
 
@@ -52,7 +52,39 @@ def recomputed(rows: pd.DataFrame, index: Index, bottom: str) -> np.ndarray:
 def check(table: Table, *, slip_tolerance: float) -> Answer:
     """One check for each reported index of each pyrolysis row: do the allowed and the reported interval overlap?"""
     rows = table.of("pyrolysis")
-    return merge([_check(rows, index, slip_tolerance) for index in INDICES])
+    answers = {index.code: _check(rows, index, slip_tolerance) for index in INDICES}
+    passing = {code: set(answer.outcome.index[answer.outcome == PASS]) for code, answer in answers.items()}
+    failing: dict[int, set[str]] = {}
+    for code, answer in answers.items():
+        for finding in answer.findings:
+            failing.setdefault(_row(finding), set()).add(code)
+    told = merge(list(answers.values()))
+    suspects = {
+        row: suspect(codes, {code for code in passing if row in passing[code]}) for row, codes in failing.items()
+    }
+    return replace(told, findings=[_with_suspects(finding, blamed[_row(finding)]) for finding in told.findings])
+
+
+def suspects(failing: set[str], passing: set[str]) -> list[str]:
+    """The values any one of which explains why these indices fail and those hold.
+
+    An input that every failing index shares and no holding one has; and the index itself where it alone fails.
+    """
+    made_of = {index.code: {index.top, index.bottom} for index in INDICES}
+    sound = set().union(*(made_of[code] for code in passing))
+    shared = set.intersection(*(made_of[code] for code in failing)) - sound
+    return [*(failing if len(failing) == 1 else ()), *sorted(shared)]
+
+
+def _row(finding: Finding) -> int:
+    return -1 if finding.row is None else finding.row
+
+
+def _with_suspects(finding: Finding, names: list[str]) -> Finding:
+    text = finding.message
+    if 1 <= len(names) <= 2:
+        text += f" The other indices of the sample point to {' or '.join(names)}."
+    return replace(finding, message=text, more={**finding.more, "suspects": names})
 
 
 def _check(rows: pd.DataFrame, index: Index, slip_tolerance: float) -> Answer:

@@ -48,12 +48,19 @@ class Answer:
     """What a rule found: one outcome a check, one finding a firing.
 
     ``outcome`` is indexed by row of ``Table.rows`` (a row appears once for each value checked in it; a rule over sets
-    has one entry a set, at the set's first row). ``sets`` carries fits on to the rules that build upon them.
+    has one entry a set, at the set's first row). ``sets`` carries fits on to the rules that build upon them; ``settled`` are
+    places in ``findings`` that a reviewer dismissed, to which later rules pay no heed.
     """
 
     outcome: pd.Series
     findings: list[Finding] = field(default_factory=list)
     sets: Mapping[Any, Any] = field(default_factory=dict)
+    settled: frozenset[int] = frozenset()
+
+    @property
+    def open(self) -> list[Finding]:
+        """Findings that no reviewer has dismissed."""
+        return [finding for place, finding in enumerate(self.findings) if place not in self.settled]
 
     def counts(self) -> dict[str, int]:
         """How often each of the four outcomes was given."""

@@ -9,7 +9,7 @@ import pandas as pd
 
 from qc.rules import fits
 from qc.rules.facts import not_rock, valid_tmax
-from qc.rules.rule import INFO, Answer
+from qc.rules.rule import INFO, REJECT, Answer
 from qc.rules.spans import Floats, censored, exact
 from qc.rules.table import Table
 
@@ -17,11 +17,12 @@ POINTS_SHOWN = 100
 CONTAMINATION = (
     "free_oil_crossover", "s1_toc_line", "pi_high_for_maturity", "pi_low_tmax_pair", "oil_based_fluid_interval"
 )  # fmt: skip
+ARITHMETIC = ("index_recalc", "pyro_carbon_balance", "hi_ceiling", "pyro_value_range")
 
 
 @dataclass(frozen=True)
 class Fit:
-    """One unit's line. ``rows`` are the samples drawn through; ``judged`` all exact ones, stained ones too.
+    """One unit's line. ``rows`` are the samples drawn through; ``judged`` all exact ones, doubted ones too.
 
     ``reason`` says why nothing may be read from it; empty where it may. ``stated`` is False where no formation is
     known and the whole well stands for a unit.
@@ -53,34 +54,45 @@ class Fit:
         return -self.line.intercept / self.line.slope if self.line.slope else float("nan")
 
 
-def suspects(answers: Mapping[str, Answer]) -> set[int]:
-    """Rows on which a contamination rule fired with more than information."""
+def stained_rows(answers: Mapping[str, Answer]) -> set[int]:
+    """Rows on which a contamination rule fired with more than information, and nobody dismissed it."""
     found: set[int] = set()
     for rule in CONTAMINATION:
-        for finding in answers[rule].findings if rule in answers else ():
+        for finding in answers[rule].open if rule in answers else ():
             if finding.severity != INFO:
                 found |= set(finding.rows) if finding.row is None else {finding.row}
     return found
+
+
+def impossible_rows(answers: Mapping[str, Answer]) -> set[int]:
+    """Rows whose S2 or TOC arithmetic shows to be wrong, unless that was dismissed."""
+    return {
+        finding.row
+        for rule in ARITHMETIC
+        for finding in (answers[rule].open if rule in answers else ())
+        if finding.row is not None and finding.severity == REJECT
+        if {"S2", "TOC"} & set(finding.more.get("suspects", ["S2"] if rule == "hi_ceiling" else [finding.analyte]))
+    }
 
 
 def fit_units(table: Table, limits: Mapping[str, float]) -> list[Fit]:
     """A fit for each uniform unit: well, formation and sample kind, in the order of the table."""
     rows = table.of("pyrolysis")
     rows = rows[~not_rock(rows) & ((rows["S2_id"] >= 0) | (rows["TOC_id"] >= 0))]
-    stained = suspects(table.answers)
+    stained, wrong = stained_rows(table.answers), impossible_rows(table.answers)
     tmax = pd.Series(valid_tmax(rows, limits["s2_min"]), index=rows.index)
     return [
-        _fit(group, stained, tmax, limits)
+        _fit(group, (stained, wrong), tmax, limits)
         for _, group in rows.groupby(["well", "unit", "kind"], sort=False)
     ]  # fmt: skip
 
 
-def _fit(rows: pd.DataFrame, stained: set[int], tmax: pd.Series, limits: Mapping[str, float]) -> Fit:
-    excluded = _excluded(rows, stained, limits)
+def _fit(rows: pd.DataFrame, doubted: tuple[set[int], set[int]], tmax: pd.Series, limits: Mapping[str, float]) -> Fit:
+    excluded = _excluded(rows, doubted, limits)
     used = rows[~rows.index.isin(excluded)]
     order = np.lexsort((used["S2"].to_numpy(), used["TOC"].to_numpy()))
     used = used.iloc[order]
-    judged = rows.index[~rows.index.isin([row for row, why in excluded.items() if why != STAINED])]
+    judged = rows.index[~rows.index.isin([row for row, why in excluded.items() if why not in {STAINED, WRONG}])]
     x, y = used["TOC"].to_numpy(dtype=float), used["S2"].to_numpy(dtype=float)
     made: dict[str, Any] = {
         "unit": str(rows["unit"].iloc[0]), "kind": str(rows["kind"].iloc[0]), "well": int(rows["well"].iloc[0]),
@@ -94,9 +106,10 @@ def _fit(rows: pd.DataFrame, stained: set[int], tmax: pd.Series, limits: Mapping
 
 
 STAINED = "a contamination rule fired on it"
+WRONG = "its S2 or TOC is arithmetically impossible"
 
 
-def _excluded(rows: pd.DataFrame, stained: set[int], limits: Mapping[str, float]) -> dict[int, str]:
+def _excluded(rows: pd.DataFrame, doubted: tuple[set[int], set[int]], limits: Mapping[str, float]) -> dict[int, str]:
     """Samples that the line is not drawn through, each with its reason."""
     reasons = [
         (rows["S2_rej"] | rows["TOC_rej"], "S2 or TOC was rejected"),
@@ -104,7 +117,8 @@ def _excluded(rows: pd.DataFrame, stained: set[int], limits: Mapping[str, float]
         (censored(rows, "S2") | censored(rows, "TOC"), "S2 or TOC is a bound, not a value"),
         ((rows["TOC"] <= 0) | (rows["S2"] < 0), "TOC or S2 is not possible"),
         (exact(rows, "TOC") > limits["coal_toc"], "coal"),
-        (rows.index.isin(stained), STAINED),
+        (rows.index.isin(doubted[1]), WRONG),
+        (rows.index.isin(doubted[0]), STAINED),
     ]
     found: dict[int, str] = {}
     for mask, why in reasons:

@@ -16,7 +16,7 @@ from labdata.models import (
     SourceTable,
     Well,
 )  # fmt: skip
-from qc.models import Decision, ReviewSet, Verdict
+from qc.models import Decision, Flag, FlagAnswer, ReviewSet, Verdict
 from qc.rules.records import read
 from qc.rules.table import ANALYTES
 from tests.factories import ProjectFactory, UserFactory
@@ -60,6 +60,15 @@ def decide(result: Result, verdict: Verdict) -> None:
     Decision.objects.create(
         review_set=review_set, result=result, verdict=verdict, reason=reason, decided_by=UserFactory()
     )
+
+
+def dismiss(flag: Flag) -> None:
+    """A person's answer that the flag is wrong."""
+    review_set, _ = ReviewSet.objects.get_or_create(project=flag.well.project, well=flag.well, number=1)
+    FlagAnswer.objects.create(
+        review_set=review_set, fingerprint=flag.fingerprint, rule=flag.rule, answer="dismissed", reason="known oil show",
+        answered_by=UserFactory(),
+    )  # fmt: skip
 
 
 def _table(project: Project, number: str, method: str) -> SourceTable:

@@ -2,6 +2,7 @@
 
 import pytest
 
+from qc.rules.index_recalc import suspects
 from qc.rules.pyro_carbon_balance import full_cycle_carbon
 from qc.rules.records import table_of
 from qc.rules.toc_floor_for_indices import relative_uncertainty
@@ -64,6 +65,14 @@ def test_index_recalc_takes_the_decimals_of_a_coarser_batch():
     """Five values and more of one batch with one decimal were given to one decimal."""
     coarse = [{"label": f"E17-{n}", "TOC": "0.9", "S2": "0.90", "HI": "104"} for n in range(5)]
     assert outcomes("index_recalc", *coarse, {"label": "E18-1", "TOC": "1.25", "S2": "1.25", "HI": "100"}) == {"pass"}
+
+
+@pytest.mark.parametrize(("failing", "passing", "made"), [
+    ({"HI", "OI"}, {"PI"}, ["TOC"]), ({"HI", "PI"}, {"OI"}, ["S2"]), ({"HI"}, {"OI", "PI"}, ["HI"]),
+    ({"HI"}, set(), ["HI", "S2", "TOC"]), ({"HI"}, {"OI"}, ["HI", "S2"]), ({"GP", "S2S3"}, {"OI", "OSI"}, ["S2"]),
+])  # fmt: skip
+def test_the_other_indices_point_to_the_wrong_value(failing, passing, made):
+    assert suspects(failing, passing) == made
 
 
 @pytest.mark.parametrize(("record", "outcome"), [

@@ -80,6 +80,15 @@ def test_many_stained_samples_leave_contamination_unresolved():
     assert outcomes("s2_toc_fit", *worked_set(), *stained) == {"not_applicable"}
 
 
+def test_a_slip_in_s2_does_not_spoil_the_fit():
+    """Ten times S2 with HI and PI as they were: arithmetic names S2, and the line is drawn without that sample."""
+    slip = {**worked_set()[4], "label": "slip", "S2": "41.90", "HI": "349", "S3": "0.60", "OI": "50"}
+    finding = only("s2_toc_fit", *worked_set(), slip)
+    assert finding.more["fit"]["n"] == 12
+    assert "slip" in finding.more["excluded"][0]
+    assert [one.row for one in ask("s2_toc_outlier", *worked_set(), slip).findings] == [10, 12]
+
+
 def test_s2_retained():
     findings = ask("s2_retained", *worked_set()).findings
     assert {finding.severity for finding in findings} == {"info"}

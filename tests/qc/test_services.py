@@ -15,7 +15,7 @@ from qc.services import flag_entry, prepare_qc, run_answer, start_run
 from qc.tables import read
 from tests.factories import MembershipFactory, ProjectFactory, UserFactory, WellFactory
 from tests.qc.asking import worked_set
-from tests.qc.storing import decide, store
+from tests.qc.storing import decide, dismiss, store
 
 pytestmark = pytest.mark.django_db(transaction=True)
 
@@ -117,6 +117,16 @@ def test_fits_leave_out_rejected_values():
     assert "rejected" in made.flags.get(rule="s2_toc_fit").evidence["excluded"][0]
     decide(odd, Verdict.ACCEPTED)  # the latest decision stands
     assert run(project).flags.filter(rule="s2_toc_outlier").count() == 1
+
+
+def test_a_dismissed_stain_is_drawn_through_again():
+    project = store([*worked_set(), {**worked_set()[5], "label": "stained", "S1": "4.00", "TMAX": "426"}])
+    made = run(project)
+    fit = made.flags.get(rule="s2_toc_fit")
+    assert "stained" in fit.evidence["excluded"][0]
+    for flag in made.flags.filter(family="contamination"):
+        dismiss(flag)
+    assert run(project).flags.get(rule="s2_toc_fit").evidence["fit"]["n"] == 13
 
 
 def test_carbon_and_reflectance_of_the_same_sample_join():
