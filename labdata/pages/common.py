@@ -46,7 +46,7 @@ def page_of(request: HttpRequest, rows: Any, size: int = PAGE_SIZE) -> Page[Any]
     return Paginator(rows, size).get_page(request.GET.get("page"))
 
 
-def attempt(form: forms.Form, service: Callable[[], T]) -> T | None:
+def attempt(form: forms.BaseForm, service: Callable[[], T]) -> T | None:
     """What ``service`` answers, or None with its refusal written on the form."""
     try:
         return service()

@@ -32,6 +32,7 @@ def result(request: HttpRequest, slug: str, pk: int) -> HttpResponse:
     context = {
         "result": at_hand,
         "address": address(at_hand),
+        "later": at_hand.successors.select_related("analysis__report", "analyte", "column").first(),
         "stand": standing(Result.objects.filter(pk=pk)).get(pk),
         "flags": Flag.objects.latest().filter(result=at_hand),
         "analysis_flags": Flag.objects.latest().filter(analysis=at_hand.analysis, result__isnull=True),

@@ -44,7 +44,7 @@ class AgainForm(forms.Form):
 class UploadForm(AgainForm):
     """Files and what the person knows about them."""
 
-    files = FilesField(
+    lab_files = FilesField(
         label="Laboratory files",
         help_text="Tables as the laboratory sent them: .xlsx, .xlsm, .xls, .csv, .tsv or .txt. "
         "Drop them here or choose them; what they hold is decided by content, not by name.",
@@ -77,11 +77,11 @@ def _receive_all(request: HttpRequest, project: Project, form: UploadForm) -> li
     """Receive each file on its own; a refused one is named on the form and does not stop the others."""
     asked = form.cleaned_data
     received = []
-    for file in asked["files"]:
+    for file in asked["lab_files"]:
         try:
             received.append(_receive(request, project, file, asked))
         except KerogateError as refusal:
-            form.add_error("files", f"{file.name}: {refusal}")
+            form.add_error("lab_files", f"{file.name}: {refusal}")
             messages.error(request, f"{file.name}: {refusal}")
     return received
 

@@ -1,10 +1,11 @@
 """Wells: the list, a well with everything along it, and recording by hand what no file brings."""
 
+from collections import defaultdict
 from typing import Any
 
 from django import forms
 from django.contrib import messages
-from django.db.models import Count, OuterRef, Q, QuerySet, Subquery
+from django.db.models import Count, OuterRef, Q, QuerySet, Subquery, Value
 from django.db.models.functions import Coalesce
 from django.forms import modelform_factory
 from django.http import HttpRequest, HttpResponse
@@ -13,11 +14,11 @@ from django.views.decorators.http import require_http_methods, require_POST, req
 
 from labdata.access import Action, visible
 from labdata.errors import NotFound
-from labdata.models import Analysis, Project, Report, Sample, Well
+from labdata.models import Analysis, Project, Report, Result, Sample, Well
 from labdata.pages.common import attempt, find, open_project, page_of, person
 from labdata.registry.edits import ALONG, HEADER, add_along, edit_well, remove_along
-from qc.models import Flag
-from qc.review.worklist import work_list
+from qc.models import Decision, Flag, Verdict
+from qc.review.standing import valid_signature
 
 ALONG_TITLES = {
     "top": "Formation tops",
@@ -96,11 +97,29 @@ def well(request: HttpRequest, slug: str, pk: int) -> HttpResponse:
         "well": at_hand,
         "page": page_of(request, samples.order_by("top_md_m", "label", "pk"), 100),
         "flags": flags.values("rule", "severity").annotate(n=Count("pk")),
-        "lines": [line for line in work_list(project, person(request)) if line.review_set.well_id == at_hand.pk],
+        "sets": _sets(at_hand),
         "reports": Report.objects.filter(analyses__sample__well=at_hand).select_related("laboratory", "source_file")
         .annotate(n=Count("analyses", filter=Q(analyses__sample__well=at_hand))),
     }  # fmt: skip
     return render(request, "wells/well.html", context)
+
+
+def _sets(at_hand: Well) -> list[dict[str, Any]]:
+    """The well's review sets, each with its signature and how many results stand at each verdict."""
+    latest = Decision.objects.filter(result=OuterRef("pk")).order_by("-pk").values("verdict")[:1]
+    current = Result.objects.filter(current=True, analysis__current=True, analysis__sample__well=at_hand)
+    counted = (
+        current.annotate(stands=Coalesce(Subquery(latest), Value(Verdict.UNDECIDED)))
+        .order_by()
+        .values_list("analysis__review_item__review_set", "stands")
+        .annotate(n=Count("pk"))
+    )
+    counts: dict[int, dict[str, int]] = defaultdict(dict)
+    for pk, verdict, number in counted:
+        counts[pk][verdict] = number
+    return [
+        {"set": one, "signature": valid_signature(one), "counts": counts[one.pk]} for one in at_hand.review_sets.all()
+    ]
 
 
 @require_http_methods(["GET", "POST"])
@@ -121,7 +140,7 @@ def well_edit(request: HttpRequest, slug: str, pk: int) -> HttpResponse:
     return render(request, "wells/well_edit.html", _desk(at_hand, form))
 
 
-def _desk(at_hand: Well, form: forms.Form, kind: str = "", sent: forms.Form | None = None) -> dict[str, Any]:
+def _desk(at_hand: Well, form: forms.BaseForm, kind: str = "", sent: forms.BaseForm | None = None) -> dict[str, Any]:
     """What the edit page shows; ``sent`` is the refused form of ``kind``."""
     along = [
         {

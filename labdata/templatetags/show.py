@@ -20,6 +20,12 @@ def metres(value: float | None) -> str:
 
 
 @register.filter
+def bearing(degrees: float | None, letters: str) -> str:
+    """Degrees with the letter of their side: -38.2 with "EW" is "38.200000° W"."""
+    return "–" if degrees is None else f"{abs(degrees):.6f}° {letters[degrees < 0]}"
+
+
+@register.filter
 def interval(sample: Any) -> str:
     """Top and base of a sample in metres, or what there is of them; a dash where there is no sample."""
     if not isinstance(sample, Sample) or sample.top_md_m is None:

@@ -5,7 +5,7 @@ import json
 import pytest
 from django.core.files.uploadedfile import SimpleUploadedFile
 
-from labdata.models import Job, JobState, Release, Upload
+from labdata.models import Job, JobState, Release, Report, Upload
 from tests.pages.world import workbook
 
 CSV = b"Well,Depth (m),TOC (wt%)\nQuill 2,2100,1.5\n"
@@ -17,7 +17,7 @@ def file(content: bytes = CSV, name: str = "toc.csv") -> SimpleUploadedFile:
 
 def test_a_file_is_received_and_its_page_shows_progress(made, as_, at):
     client = as_("analyst")
-    answer = client.post(at("uploads"), {"files": [file()], "lab": "Laboratory 9"})
+    answer = client.post(at("uploads"), {"lab_files": [file()], "lab": "Laboratory 9"})
     upload = Upload.objects.latest("pk")
     assert answer["Location"] == at("upload", upload.pk)
     assert (upload.laboratory_name, upload.outcome, upload.job.state) == ("Laboratory 9", "received", JobState.QUEUED)
@@ -33,12 +33,12 @@ def test_progress_ends_with_a_new_load_of_the_page(made, as_, at):
 
 def test_several_files_come_in_at_once(made, as_, at):
     before = Upload.objects.count()
-    answer = as_("analyst").post(at("uploads"), {"files": [file(), file(CSV + b"Quill 2,2110,1.6\n", "more.csv")]})
+    answer = as_("analyst").post(at("uploads"), {"lab_files": [file(), file(CSV + b"Quill 2,2110,1.6\n", "more.csv")]})
     assert answer["Location"] == at("uploads")
     assert Upload.objects.count() == before + 2
 
 
-@pytest.mark.parametrize(("sent", "said"), [({}, "This field is required"), ({"files": [file(b"")]}, "empty")])
+@pytest.mark.parametrize(("sent", "said"), [({}, "This field is required"), ({"lab_files": [file(b"")]}, "empty")])
 def test_no_file_and_an_empty_file_are_named(made, as_, at, sent, said):
     answer = as_("analyst").post(at("uploads"), sent)
     assert answer.status_code == 200
@@ -46,7 +46,7 @@ def test_no_file_and_an_empty_file_are_named(made, as_, at, sent, said):
 
 
 def test_an_analyst_does_not_make_wells(made, as_, at):
-    answer = as_("analyst").post(at("uploads"), {"files": [file()], "create_wells": "on"})
+    answer = as_("analyst").post(at("uploads"), {"lab_files": [file()], "create_wells": "on"})
     assert answer.status_code == 200
     assert "may not register" in answer.content.decode()
 
@@ -124,3 +124,56 @@ def test_a_release_is_asked_for_with_a_title(made, as_, at):
     answer = client.post(at("release_new"), {"title": "Second look"})
     job = Job.objects.get(kind="release")
     assert answer["Location"] == at("job", job.pk)
+
+
+def refused(made) -> Upload:
+    """The waiting file as a refused one, with a cell that cannot be read and a well that is not known twelve times."""
+    cell = {"level": "error", "id": "cell:Sheet1!F7", "code": "unreadable", "sheet": "Sheet1", "cell": "F7", "value": "n/k",
+            "message": "S2 in cell F7 cannot be read.", "remedy": "Correct it."}  # fmt: skip
+    wells = [{**cell, "id": f"well:{row}", "cell": f"A{row}", "value": "Quil 2", "message": "There is no well «Quil 2»."}
+             for row in range(5, 20)]  # fmt: skip
+    made.upload.outcome, made.upload.answer = "refused", {"tables": [], "findings": [cell, *wells]}
+    made.upload.save()
+    return made.upload
+
+
+def test_errors_that_say_the_same_are_one_line(made, as_, at):
+    answer = as_("analyst").get(at("upload", refused(made).pk))
+    errors = dict(answer.context["levels"])["error"]
+    assert [len(row["places"]) for row in errors] == [1, 15]
+    assert "and 3 more" in answer.content.decode()
+    assert "leave F7 out" in answer.content.decode()
+    assert "leave A5 out" not in answer.content.decode()
+
+
+def test_a_refused_file_is_read_again_without_a_cell(made, as_, at):
+    as_("analyst").post(at("upload_answer", refused(made).pk), {"answer:cell:Sheet1!F7": "blank", "answer:well:5": "x"})
+    made.upload.refresh_from_db()
+    assert (made.upload.answers, made.upload.outcome) == ({"cell:Sheet1!F7": "blank"}, "received")
+
+
+def test_a_file_is_read_again_with_other_particulars(made, as_, at):
+    fresh = as_("coordinator").post(at("uploads"), {"lab_files": [file()]})["Location"]
+    first = Upload.objects.latest("pk")
+    Upload.objects.filter(pk=first.pk).update(outcome="refused")
+    assert fresh == at("upload", first.pk)
+    as_("coordinator").post(
+        at("upload_again", first.pk), {"lab": "Laboratory 9", "well": "Quill 2", "create_wells": "on"}
+    )
+    again = Upload.objects.latest("pk")
+    assert again.pk != first.pk
+    assert again.source_file == first.source_file
+    assert (again.laboratory_name, again.options) == ("Laboratory 9", {"well": "Quill 2", "create_wells": True})
+
+
+def test_an_amended_report_tells_what_changed(made, as_, at):
+    imported = Upload.objects.get(outcome="imported")
+    report = imported.report
+    other = Report.objects.exclude(pk=report.pk).first()
+    report.supersedes, report.version = other, 2
+    report.difference = {"changed": 1, "added": 0, "withdrawn": 0, "unchanged": 14, "values": [
+        {"what": "changed", "sample": "S-1", "analyte": "S2", "was": "6.0", "now": "6.4"}]}  # fmt: skip
+    report.save()
+    text = as_("interpreter").get(at("upload", imported.pk)).content.decode()
+    assert "which supersedes version 1" in text
+    assert "6.4" in text

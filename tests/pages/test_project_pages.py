@@ -229,3 +229,29 @@ def test_a_fault_of_ours_has_a_page_too(made, at, monkeypatch):
     answer = client.get(at("wells"))
     assert answer.status_code == 500
     assert "Something broke on our side" in answer.content.decode()
+
+
+def new_password(username: str, password: str = "another phrase of words") -> dict:
+    return {"password-username": username, "password-password": password}
+
+
+def test_a_lost_password_is_set_anew(made, as_, at):
+    user = made.person("analyst")
+    assert as_("administrator").post(at("member_password"), new_password(user.username)).status_code == 302
+    user.refresh_from_db()
+    assert user.check_password("another phrase of words")
+    assert AuditEntry.objects.get(action="account.password_set").object_id == str(user.pk)
+
+
+def test_a_password_that_opens_other_projects_is_not_set_here(made, as_, at):
+    analyst, staff, stranger = made.person("analyst"), UserFactory(is_staff=True), UserFactory()
+    Membership.objects.create(
+        user=analyst, project=Project.objects.create(slug="other", name="Other"), role=Role.ANALYST
+    )
+    Membership.objects.create(user=staff, project=made.scene.project, role=Role.ANALYST)
+    for user, said in [(analyst, "do not administer"), (staff, "do not administer"), (stranger, "is no member")]:
+        answer = as_("administrator").post(at("member_password"), new_password(user.username))
+        assert said in answer.content.decode()
+        before = user.password
+        user.refresh_from_db()
+        assert user.password == before
