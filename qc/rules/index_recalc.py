@@ -59,8 +59,8 @@ def check(table: Table, *, slip_tolerance: float) -> Answer:
         for finding in answer.findings:
             failing.setdefault(_row(finding), set()).add(code)
     told = merge(list(answers.values()))
-    suspects = {
-        row: suspect(codes, {code for code in passing if row in passing[code]}) for row, codes in failing.items()
+    blamed = {
+        row: suspects(codes, {code for code in passing if row in passing[code]}) for row, codes in failing.items()
     }
     return replace(told, findings=[_with_suspects(finding, blamed[_row(finding)]) for finding in told.findings])
 
