@@ -118,10 +118,10 @@ def reflectance() -> bytes:
     """Vitrinite reflectance of two wells, with a column that intake has no field for."""
     title = _title(BRACKWATER, "BRL-24140", 1, Method="Random reflectance in oil, polished whole-rock pellets")
     table = pd.concat([_named(reporting.reflectance(w, 10), w) for w in (TARROW_1, SALLOWBY_1)])
-    table["pellet"] = [f"P-{number}" for number in range(881, 881 + len(table))]
+    table["fluorescence"] = ["yellow" if ro < 0.6 else "orange" if ro < 0.75 else "dull orange" for ro in table["ro"]]
     columns = (
         Column("well", "Well"), *IDENTITY, Column("top", "Top depth", "m", 1), Column("base", "Base depth", "m", 1),
-        Column("ro", "Ro mean", "%", 2), Column("ro_sd", "Ro SD", "%", 3), Column("ro_n", "No. of readings", "", 0),
+        Column("ro", "Ro mean", "%", 2), Column("ro_sd", "Ro SD", "%", 3), Column("ro_n", "No. of readings", "", 0), Column("fluorescence", "Fluorescence"),
     )  # fmt: skip
     return workbook([Sheet("Reflectance", title, columns, table, units_row=False)], BRACKWATER.name)
 

@@ -53,7 +53,7 @@ django.setup()
 from django.core.management import call_command
 release, folder = sys.argv[1:]
 for shape in ("long", "wide"):
-    call_command("pull", release=release, format="parquet", shape=shape, out=f"{folder}/{shape}.parquet")
+    call_command("pull", release=int(release), format="parquet", shape=shape, out=f"{folder}/{shape}.parquet")
 call_command("audit")
 """
 

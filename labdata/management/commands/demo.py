@@ -11,7 +11,7 @@ from labdata.errors import KerogateError
 from labdata.management.commands._base import ServiceCommand
 from labdata.supervisor import announce, serve
 from labdata.supervisor.lock import home_lock
-from labdata.supervisor.setup import prepare_home
+from labdata.supervisor.setup import prepare_home, prepare_schema
 
 
 class Command(ServiceCommand):
@@ -40,7 +40,7 @@ class Command(ServiceCommand):
         from labdata.demo import scenario  # noqa: PLC0415 - models are not needed to read the arguments
         from labdata.demo.summary import summary  # noqa: PLC0415
 
-        prepare_home(settings.HOME, self.progress)
+        prepare_schema(self.progress)
         stage = scenario.set_stage(self.progress, must_sign=True)
         release = scenario.finish(stage)
         answer = summary(stage.project, release)
