@@ -1,15 +1,20 @@
-"""A cut-out of the laboratory's own sheet around one result, read again from the stored file."""
+"""Cut-outs of the laboratory's own sheet, read again from the stored file: around a result, or of a whole table."""
 
 import re
+from collections.abc import Callable
 from dataclasses import dataclass
+from typing import Any
 
 from django.core.files.storage import default_storage
 
 from labdata.intake.workbook import Sheet, cell_text, letters, read
-from labdata.models import Result, SourceTable
+from labdata.models import Result, SourceFile, SourceTable
 
 AROUND = 4
 HEADER_ROWS = 2
+FIRST_ROWS = 6
+MOST_COLUMNS = 80
+MOST_FINDINGS = 12
 
 
 @dataclass(frozen=True)
@@ -29,11 +34,12 @@ class Line:
 
 @dataclass(frozen=True)
 class Extract:
-    """``letters`` of the columns shown, then the rows."""
+    """``letters`` of the columns shown, what each was read as (when that is asked for), then the rows."""
 
     sheet: str
     letters: list[str]
     lines: list[Line]
+    fields: tuple[str, ...] = ()
 
 
 def place(result: Result) -> tuple[int, int]:
@@ -54,11 +60,45 @@ def extract(result: Result) -> Extract | None:
 
     None when the sheet is not in the stored file. Raises UnreadableFile as reading the file does.
     """
-    table, file = result.column.table, result.column.table.report.source_file
+    table = result.column.table
+    sheet = _sheet(table.report.source_file, table.sheet)
+    return _cut(sheet, result, table) if sheet else None
+
+
+def preview(file: SourceFile, table: dict[str, Any], findings: list[dict[str, Any]]) -> Extract | None:
+    """The head and first rows of a recognised table, and the rows of its findings, with what each column was read as.
+
+    ``table`` and ``findings`` as the outside contract has them. None when there is no such sheet or range.
+    """
+    corners = _corners(table["range"])
+    sheet = _sheet(file, table["sheet"])
+    if corners is None or sheet is None:
+        return None
+    (top, left), (bottom, right) = corners
+    columns = list(range(left, min(right, left + MOST_COLUMNS - 1) + 1))
+    marks = _finding_marks(table["sheet"], findings)
+    near = {row + step for row, _ in list(marks)[:MOST_FINDINGS] for step in (-1, 0, 1)}
+    rows = sorted(row for row in {*range(top, top + HEADER_ROWS + FIRST_ROWS), *near} if top <= row <= bottom)
+    fields = {one["column"]: f"{one['field']} {one['unit']}".strip() for one in table["columns"]}
+    names = [letters(one - 1) for one in columns]
+    lines = _lines(sheet, rows, columns, top, lambda row, column: marks.get((row, column), ""))
+    return Extract(sheet.name, names, lines, tuple(fields.get(name, "") for name in names))
+
+
+def _sheet(file: SourceFile, name: str) -> Sheet | None:
     with default_storage.open(file.stored_as) as stored:
         book = read(file.name, stored.read())
-    sheet = next((one for one in book.sheets if one.name == table.sheet), None)
-    return _cut(sheet, result, table) if sheet else None
+    return next((one for one in book.sheets if one.name == name), None)
+
+
+def _finding_marks(sheet: str, findings: list[dict[str, Any]]) -> dict[tuple[int, int], str]:
+    """Cell -> the mark of the gravest finding about it."""
+    marks: dict[tuple[int, int], str] = {}
+    for one in findings:
+        corner = _corners(one["cell"]) if one["cell"] and one["sheet"] in {"", sheet} else None
+        if corner:
+            marks.setdefault(corner[0], f"found-{one['level']}")
+    return marks
 
 
 def _cut(sheet: Sheet, result: Result, table: SourceTable) -> Extract:
@@ -70,20 +110,23 @@ def _cut(sheet: Sheet, result: Result, table: SourceTable) -> Extract:
     else:
         width = max(map(len, sheet.rows), default=0)
         rows, columns = mapped, _window(column, head_column, width)
-    lines, last = [], 0
+    lines = _lines(sheet, rows, columns, head_row, lambda at, across: _mark(at, across, (row, column)))
+    marked = [Line(one.number, "this-row" if one.number == row else one.mark, one.cells) for one in lines]
+    return Extract(sheet.name, [letters(one - 1) for one in columns], marked)
+
+
+def _lines(
+    sheet: Sheet, rows: list[int], columns: list[int], head_row: int, mark: Callable[[int, int], str]
+) -> list[Line]:
+    """The cells of these rows and columns, with a line of its own wherever rows are left out."""
+    lines: list[Line] = []
     for number in rows:
-        if last and number > last + 1:
+        if lines and number > lines[-1].number + 1:
             lines.append(Line(0, "gap-row", []))
-        lines.append(_line(sheet, number, columns, (row, column), head_row))
-        last = number
-    return Extract(sheet.name, [letters(one - 1) for one in columns], lines)
-
-
-def _line(sheet: Sheet, number: int, columns: list[int], this: tuple[int, int], head_row: int) -> Line:
-    held = sheet.rows[number - 1] if number <= len(sheet.rows) else []
-    cells = [Cell(cell_text(held[one - 1]) if one <= len(held) else "", _mark(number, one, this)) for one in columns]
-    mark = "this-row" if number == this[0] else "head-row" if number < head_row + HEADER_ROWS else ""
-    return Line(number, mark, cells)
+        held = sheet.rows[number - 1] if number <= len(sheet.rows) else []
+        cells = [Cell(cell_text(held[one - 1]) if one <= len(held) else "", mark(number, one)) for one in columns]
+        lines.append(Line(number, "head-row" if number < head_row + HEADER_ROWS else "", cells))
+    return lines
 
 
 def _mark(row: int, column: int, this: tuple[int, int]) -> str:
@@ -100,10 +143,22 @@ def _window(centre: int, head: int, end: int) -> list[int]:
 
 def _corner(table: SourceTable) -> tuple[int, int]:
     """Row and column, from 1, of the upper left cell of the table's range."""
-    found = re.match(r"([A-Z]+)(\d+)", table.cell_range)
+    corners = _corners(table.cell_range)
+    return corners[0] if corners else (1, 1)
+
+
+def _corners(cell_range: str) -> tuple[tuple[int, int], tuple[int, int]] | None:
+    """``B5:C9`` as ((5, 2), (9, 3)), a single cell as itself twice; None for what is no range."""
+    found = re.fullmatch(r"([A-Z]{1,3})(\d{1,7})(?::([A-Z]{1,3})(\d{1,7}))?", cell_range)
     if not found:
-        return 1, 1
-    column = 0
-    for letter in found[1]:
-        column = column * 26 + ord(letter) - 64
-    return int(found[2]), column
+        return None
+    first = (int(found[2]), _column(found[1]))
+    return first, (int(found[4]), _column(found[3])) if found[3] else first
+
+
+def _column(name: str) -> int:
+    """Column number, from 1, of its letters."""
+    number = 0
+    for letter in name:
+        number = number * 26 + ord(letter) - 64
+    return number

@@ -11,11 +11,12 @@ from django.shortcuts import redirect, render
 from django.views.decorators.http import require_http_methods, require_POST, require_safe
 
 from labdata.access import Action, visible
-from labdata.errors import KerogateError
+from labdata.errors import KerogateError, NotFound
 from labdata.intake.services import answer_questions, receive
 from labdata.models import Project, SourceFile, Upload
 from labdata.pages.common import find, open_project, page_of, person
 from labdata.pages.files import FilesField
+from labdata.pages.sheet_extract import preview
 
 LEVELS = ("error", "warning", "note")
 #: Counts of an answer as the page names them, in its order.
@@ -149,6 +150,22 @@ def upload_progress(request: HttpRequest, slug: str, pk: int) -> HttpResponse:
     if not _busy(at_hand):
         response["HX-Refresh"] = "true"
     return response
+
+
+@require_safe
+def upload_sheet(request: HttpRequest, slug: str, pk: int, table: int) -> HttpResponse:
+    """A recognised table as it stands in the sheet; loaded after the page, since the file is read once more."""
+    at_hand = _upload(request, open_project(request, slug), pk)
+    tables = at_hand.answer.get("tables", [])
+    if table >= len(tables):
+        raise NotFound(f"No table {table + 1} was found in this file.", remedy="Load the page again.")
+    try:
+        sheet = preview(at_hand.source_file, tables[table], at_hand.answer.get("findings", []))
+        trouble = ""
+    except (KerogateError, OSError) as found:
+        sheet, trouble = None, str(found)
+    name = "uploads/_sheet.html" if request.headers.get("HX-Request") else "uploads/sheet.html"
+    return render(request, name, {"upload": at_hand, "sheet": sheet, "trouble": trouble, "table": tables[table]})
 
 
 @require_POST

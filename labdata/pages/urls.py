@@ -33,6 +33,7 @@ in_project: list[URLPattern | URLResolver] = [
     path("uploads/", uploads.uploads, name="uploads"),
     path("uploads/<int:pk>/", uploads.upload, name="upload"),
     path("uploads/<int:pk>/progress/", uploads.upload_progress, name="upload_progress"),
+    path("uploads/<int:pk>/sheet/<int:table>/", uploads.upload_sheet, name="upload_sheet"),
     path("uploads/<int:pk>/again/", uploads.upload_again, name="upload_again"),
     path("uploads/<int:pk>/answer/", uploads.upload_answer, name="upload_answer"),
     path("jobs/", jobs.jobs, name="jobs"),

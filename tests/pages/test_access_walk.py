@@ -38,6 +38,7 @@ PAGES = {
     "uploads": VIEW,
     "upload": Page(names=("upload",)),
     "upload_progress": Page(names=("upload",)),
+    "upload_sheet": Page(names=("upload", "table")),
     "upload_again": Page(Action.UPLOAD, "post", ("upload",), ok=302),
     "upload_answer": Page(Action.UPLOAD, "post", ("upload",), ok=302),
     "jobs": VIEW,
@@ -88,7 +89,7 @@ def address(name: str, page: Page, made: World) -> str:
     values = {
         "well": made.well.pk, "kind": "casing", "thing": made.well.casing_shoes.get().pk,
         "sample": made.result.analysis.sample_id, "result": made.result.pk, "upload": made.upload.pk,
-        "file": made.upload.source_file_id, "job": made.job.pk, "run": made.run.pk, "rule": "s2_floor_for_tmax",
+        "file": made.upload.source_file_id, "job": made.job.pk, "run": made.run.pk, "rule": "s2_floor_for_tmax", "table": 0,
         "release": made.release.number,
     }  # fmt: skip
     return reverse(name, args=[made.slug, *(values[part] for part in page.names)])

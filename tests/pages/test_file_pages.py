@@ -177,3 +177,19 @@ def test_an_amended_report_tells_what_changed(made, as_, at):
     text = as_("interpreter").get(at("upload", imported.pk)).content.decode()
     assert "which supersedes version 1" in text
     assert "6.4" in text
+
+
+def test_a_recognised_table_is_shown_in_its_sheet(made, as_, at):
+    client = as_("interpreter")
+    sheet = client.get(at("upload_sheet", made.upload.pk, 0)).context["sheet"]
+    assert dict(zip(sheet.letters, sheet.fields, strict=True))["F"] == "S2 mg/g"
+    assert dict(zip(sheet.letters, sheet.fields, strict=True))["E"] == ""
+    marked = {(line.number, letter): cell.mark for line in sheet.lines
+              for letter, cell in zip(sheet.letters, line.cells, strict=False) if cell.mark}  # fmt: skip
+    assert marked == {(1, "H"): "found-question", (7, "F"): "found-warning"}
+    assert client.get(at("upload_sheet", made.upload.pk, 7)).status_code == 404
+
+
+def test_the_sheet_comes_alone_when_htmx_asks(made, as_, at):
+    answer = as_("interpreter").get(at("upload_sheet", made.upload.pk, 0), headers={"HX-Request": "true"})
+    assert b"<html" not in answer.content
