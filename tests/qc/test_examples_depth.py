@@ -26,6 +26,31 @@ def test_cuttings_without_length_among_others_with_one():
     assert outcomes("depth_interval_order", point, {**point, "top_m": 2550.0, "base_m": 2550.0}) == {"pass"}
 
 
+def feet_as_metres(table=1, **more):
+    return [
+        {"label": f"C-{n}", "top_m": 8202.1 + 3.28084 * n, "kind": "core", "table": table, **more} for n in range(4)
+    ]
+
+
+def test_depth_unit_mixup():
+    """8202.1 for a core cut at 2500 m: r = 3.28084."""
+    metres = [{"label": f"C-{n}", "top_m": 2500.0 + n, "kind": "core", "table": 0} for n in range(4)]
+    by_labels = only("depth_unit_mixup", *metres, *feet_as_metres())
+    assert by_labels.computed == pytest.approx(3.28084, abs=5e-5)
+    assert by_labels.rows == (4, 5, 6, 7)
+    assert by_labels.more["examples"][0] == [8202.1, pytest.approx(2500.0, abs=0.01)]
+    assert "core runs" in only("depth_unit_mixup", *feet_as_metres(), cores=[(0, 1, 2495.0, 2510.0, None)]).message
+    assert (
+        "total depth"
+        in only("depth_unit_mixup", *feet_as_metres(), wells=[{"name": "Quill 1", "td_m": 3120.0}]).message
+    )
+    assert outcomes("depth_unit_mixup", *metres, wells=[{"name": "Quill 1", "td_m": 3120.0}]) == {"pass"}
+    assert outcomes("depth_unit_mixup", *metres) == {"cannot_evaluate"}
+    assert outcomes("depth_unit_mixup", *metres[:2]) == {"not_applicable"}
+    one_deep = [*metres, {"label": "C-9", "top_m": 3500.0, "table": 0}]
+    assert outcomes("depth_unit_mixup", *one_deep, wells=[{"name": "Quill 1", "td_m": 3120.0}]) == {"pass"}
+
+
 @pytest.mark.parametrize(("top", "td", "outcome"), [
     (3125.5, 3120.0, "fire"), (3122.0, 3120.0, "pass"), (3125.5, None, "cannot_evaluate"), (None, 3120.0, "cannot_evaluate"),
 ])  # fmt: skip

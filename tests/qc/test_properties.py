@@ -45,8 +45,14 @@ def seen(table: Table, answers) -> dict[str, tuple[list[str], list[str]]]:
     }
 
 
-PER_SET = {"oil_based_fluid_interval", "s2_toc_fit", "s2_positive_intercept", "sample_sequence", "depth_interval_order"}
-BY_LINE = {"duplicate_depth", "pyro_value_range"}  # speak of the line above in the table: given here explicitly
+PER_SET = {
+    "oil_based_fluid_interval",
+    "s2_toc_fit",
+    "s2_positive_intercept",
+    "sample_sequence",
+    "depth_interval_order",
+    "depth_unit_mixup",
+}
 
 
 @quick
