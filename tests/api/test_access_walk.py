@@ -56,85 +56,63 @@ def test_every_route_is_in_the_table():
     assert len(routes()) == len(set(routes()))
 
 
-def cases():
-    return [(name, method) for name, methods in TABLE.items() for method in methods]
+CASES = [(name, method) for name, methods in TABLE.items() for method in methods]
 
 
-@pytest.mark.parametrize(("name", "method"), cases())
-def test_who_may(world, name, method):
+@pytest.mark.parametrize(("name", "method"), CASES)
+def test_a_route(world, name, method):
+    """Nobody and strangers learn nothing, a read token does not post, and of the members those may who should."""
     scene, things = world
-    may = TABLE[name][method]
-    url, body = things.address(name), things.body(name)
-    for role in sorted(EVERYONE):
-        client = client_of(scene.person(role), scene.project)
-        answer = things.call(client, method, url, body)
-        if may == "public" or role in may:
-            assert answer.status_code < 300 or (method == "post" and answer.status_code in {400, 409}), (
-                role, answer.status_code, getattr(answer, "data", None),
-            )  # fmt: skip
-            assert answer.status_code not in {401, 403, 404, 405}, role
-        else:
-            assert answer.status_code == 403, (role, answer.status_code)
-            assert answer["Content-Type"] == "application/problem+json"
-
-
-@pytest.mark.parametrize(("name", "method"), cases())
-def test_a_stranger_finds_nothing(world, name, method):
-    """A member of another project, with a token of his own project or a session, learns nothing of this one."""
-    scene, things = world
+    url, body, may = things.address(name), things.body(name), TABLE[name][method]
+    nobody(things.call(APIClient(), method, url, body), may)
     other = bare_scene()
-    person = other.person("approver")
     for role in ("coordinator", "geochemist", "approver", "administrator"):
-        person = other.person(role)
-        client = client_of(person, other.project)
-        url, body = things.address(name), things.body(name)
-        answer = things.call(client, method, url, body)
-        if TABLE[name][method] == "public" or things.shared(name):
-            assert answer.status_code == 200
-        elif "{" in things.template(name):
-            assert answer.status_code == 404 or (method == "post" and answer.status_code == 403), answer.data
-        elif method == "get" and answer.status_code == 200:
-            slugs = {row.get("project") or row.get("slug") for row in answer.json().get("results", [])}
-            assert scene.project.slug not in slugs
-            told = things.call(client, method, f"{url}?project={scene.project.slug}", None)
-            assert told.status_code == 404
-            assert f"There is no project «{scene.project.slug}»" in told.json()["detail"]
-        else:
-            assert answer.status_code in {400, 403, 404}, (role, answer.status_code, answer.data)
-            assert scene.sets[0].well.name not in answer.content.decode()
+        a_stranger(scene, things, client_of(other.person(role), other.project), name, method)
+    if method == "post":
+        reader = client_of(scene.person(min(may)), scene.project, "read")
+        refused = things.call(reader, method, url, body)
+        assert (refused.status_code, "This token only reads" in refused.json()["detail"]) == (403, True)
+        refused = things.call(signed_in(scene.person(min(may))), method, url, body)
+        assert (refused.status_code, "CSRF" in refused.json()["detail"]) == (403, True)
+    for role in sorted(EVERYONE):
+        answer = things.call(client_of(scene.person(role), scene.project), method, url, body)
+        a_member(answer, role, may == "public" or role in may)
 
 
-@pytest.mark.parametrize(("name", "method"), cases())
-def test_nobody_gets_nothing(world, name, method):
-    _, things = world
-    answer = things.call(APIClient(), method, things.address(name), things.body(name))
-    if TABLE[name][method] == "public":
+def nobody(answer, may):
+    if may == "public":
         assert answer.status_code == 200
     else:
-        assert answer.status_code == 401
-        assert answer["WWW-Authenticate"] == "Token"
+        assert (answer.status_code, answer["WWW-Authenticate"]) == (401, "Token")
         assert answer.json()["code"] == "not_authenticated"
 
 
-@pytest.mark.parametrize("name", [name for name, methods in TABLE.items() if "post" in methods])
-def test_a_read_token_does_not_post(world, name):
-    scene, things = world
-    may = sorted(TABLE[name]["post"])[0]
-    client = client_of(scene.person(may), scene.project, "read")
-    answer = things.call(client, "post", things.address(name), things.body(name))
-    assert answer.status_code == 403
-    assert "This token only reads" in answer.json()["detail"]
+def a_member(answer, role, may):
+    """Who may gets an answer, at worst that the state of things forbids it; who may not gets 403."""
+    told = (role, answer.status_code, getattr(answer, "data", None))
+    if may:
+        assert answer.status_code < 300 or answer.status_code in {400, 409}, told
+    else:
+        assert (answer.status_code, answer["Content-Type"]) == (403, "application/problem+json"), told
 
 
-@pytest.mark.parametrize("name", [name for name, methods in TABLE.items() if "post" in methods])
-def test_a_session_needs_a_csrf_token(world, name):
-    scene, things = world
-    may = sorted(TABLE[name]["post"])[0]
-    client = signed_in(scene.person(may))
-    assert client.get("/api/v1/projects").status_code == 200
-    answer = things.call(client, "post", things.address(name), things.body(name))
-    assert answer.status_code == 403
-    assert "CSRF" in answer.json()["detail"]
+def a_stranger(scene, things, client, name, method):
+    """A member of another project learns nothing of this one."""
+    answer = things.call(client, method, things.address(name), things.body(name))
+    told = (name, answer.status_code, getattr(answer, "data", None))
+    if TABLE[name][method] == "public" or things.shared(name):
+        assert answer.status_code == 200, told
+    elif "{" in things.template(name):
+        assert answer.status_code == 404 or (method == "post" and answer.status_code == 403), told
+    elif method == "get" and answer.status_code == 200:
+        slugs = {row.get("project") or row.get("slug") for row in answer.json()["results"]}
+        assert scene.project.slug not in slugs
+        asked = client.get(f"{things.address(name)}?project={scene.project.slug}")
+        assert asked.status_code == 404
+        assert f"There is no project «{scene.project.slug}»" in asked.json()["detail"]
+    else:
+        assert answer.status_code in {400, 403, 404}, told
+        assert scene.sets[0].well.name not in answer.content.decode()
 
 
 def test_a_token_sees_its_own_project_only(world):

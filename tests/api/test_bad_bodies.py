@@ -12,6 +12,12 @@ pytestmark = pytest.mark.django_db
 MULTIPART = "multipart/form-data; boundary=x"
 
 
+@pytest.fixture
+def bare(db):
+    """A project with its people and nothing measured."""
+    return bare_scene()
+
+
 def told(answer, status=400):
     """The problem document, after looking that it is one."""
     assert answer.status_code == status, answer.content
@@ -74,8 +80,8 @@ DECISIONS = [
 
 
 @pytest.mark.parametrize(("body", "field", "message"), DECISIONS)
-def test_decisions(scene, body, field, message):
-    problem = told(post(client_for(scene, "geochemist"), "decisions", body))
+def test_decisions(bare, body, field, message):
+    problem = told(post(client_for(bare, "geochemist"), "decisions", body))
     assert problem["errors"][field] == [message]
     assert problem["code"] == "invalid"
 
@@ -120,28 +126,28 @@ def test_a_stale_version(scene):
     ("null", "No data provided"),
     ("\xff\xfe", "JSON parse error"),
 ])  # fmt: skip
-def test_what_is_no_object(scene, text, message):
+def test_what_is_no_object(bare, text, message):
     content = text.encode("latin-1")
-    answer = client_for(scene, "geochemist").post("/api/v1/decisions", content, content_type="application/json")
+    answer = client_for(bare, "geochemist").post("/api/v1/decisions", content, content_type="application/json")
     assert message in told(answer)["detail"]
 
 
-def test_a_form_where_json_is_wanted(scene):
-    answer = client_for(scene, "geochemist").post("/api/v1/decisions", {"a": "b"}, format="multipart")
+def test_a_form_where_json_is_wanted(bare):
+    answer = client_for(bare, "geochemist").post("/api/v1/decisions", {"a": "b"}, format="multipart")
     assert "Unsupported media type" in told(answer, 415)["detail"]
 
 
-def test_json_where_a_form_is_wanted(scene):
-    answer = post(client_for(scene, "analyst"), "uploads", {"project": scene.project.slug})
+def test_json_where_a_form_is_wanted(bare):
+    answer = post(client_for(bare, "analyst"), "uploads", {"project": bare.project.slug})
     assert "Unsupported media type" in told(answer, 415)["detail"]
 
 
-def test_a_method_that_is_not_there(scene):
-    assert told(client_for(scene, "geochemist").delete("/api/v1/decisions"), 405)["code"] == "method_not_allowed"
+def test_a_method_that_is_not_there(bare):
+    assert told(client_for(bare, "geochemist").delete("/api/v1/decisions"), 405)["code"] == "method_not_allowed"
 
 
-def test_a_broken_form(scene):
-    answer = client_for(scene, "analyst").post("/api/v1/uploads", b"no parts at all", content_type=MULTIPART)
+def test_a_broken_form(bare):
+    answer = client_for(bare, "analyst").post("/api/v1/uploads", b"no parts at all", content_type=MULTIPART)
     assert set(told(answer)["errors"]) == {"file", "project"}
 
 
@@ -156,12 +162,12 @@ def test_a_broken_form(scene):
     ({"wells": "Quill 1"}, "wells", "This field is not known here"),
     ({"lab": "x" * 161}, "lab", "Ensure this field has no more than 160 characters."),
 ])  # fmt: skip
-def test_uploads(scene, change, field, message):
+def test_uploads(bare, change, field, message):
     from django.core.files.uploadedfile import SimpleUploadedFile  # noqa: PLC0415
 
-    form = {"project": scene.project.slug, "file": SimpleUploadedFile("a.csv", b"Well,TOC\n"), **change}
+    form = {"project": bare.project.slug, "file": SimpleUploadedFile("a.csv", b"Well,TOC\n"), **change}
     form = {name: value for name, value in form.items() if value is not None}
-    answer = client_for(scene, "analyst").post("/api/v1/uploads", form, format="multipart")
+    answer = client_for(bare, "analyst").post("/api/v1/uploads", form, format="multipart")
     assert told(answer)["errors"][field][0].startswith(message)
 
 
@@ -178,17 +184,17 @@ def test_uploads(scene, change, field, message):
     ("releases", "approver", {"project": "P", "title": ["x"]}, "title", "Not a valid string."),
     ("releases", "approver", {"project": "P", "title": "x", "number": 9}, "number", "This field is not known here"),
 ])  # fmt: skip
-def test_other_posts(scene, route, role, body, field, message):  # noqa: PLR0917
+def test_other_posts(bare, route, role, body, field, message):  # noqa: PLR0917
     if body.get("project") == "P":
-        body = {**body, "project": scene.project.slug}
-    problem = told(post(client_for(scene, role), route, body))
+        body = {**body, "project": bare.project.slug}
+    problem = told(post(client_for(bare, role), route, body))
     assert problem["errors"][field][0].startswith(message)
     assert f"{field}: " in problem["detail"]
 
 
-def test_nothing_is_signed_yet(scene):
-    body = {"project": scene.project.slug, "title": "Too early"}
-    assert told(post(client_for(scene, "approver"), "releases", body), 409)["code"] == "nothing_signed"
+def test_nothing_is_signed_yet(bare):
+    body = {"project": bare.project.slug, "title": "Too early"}
+    assert told(post(client_for(bare, "approver"), "releases", body), 409)["code"] == "nothing_signed"
 
 
 def test_a_set_that_is_not_decided(scene):
@@ -213,9 +219,9 @@ def test_ones_own_decisions(scene):
     assert told(answer, 403)["code"] == "self_sign_off"
 
 
-def test_a_project_that_is_not_there_and_one_that_may_not_be_seen_are_told_alike(scene):
+def test_a_project_that_is_not_there_and_one_that_may_not_be_seen_are_told_alike(bare):
     other = bare_scene().project.slug
-    client = client_for(scene, "approver")
+    client = client_for(bare, "approver")
     for slug in (other, "never-was"):
         problem = told(post(client, "releases", {"project": slug, "title": "x"}), 404)
         assert problem["message"] == f"There is no project «{slug}»."
@@ -248,8 +254,8 @@ def test_a_project_that_is_not_there_and_one_that_may_not_be_seen_are_told_alike
     ("projects?page_size=9999", "page_size", "«9999» is no number of rows"),
     ("wells?well=a%00b", "well", "Null characters are not allowed."),
 ])  # fmt: skip
-def test_parameters(scene, query, field, message):
-    problem = told(client_for(scene, "interpreter").get(f"/api/v1/{query}"))
+def test_parameters(bare, query, field, message):
+    problem = told(client_for(bare, "interpreter").get(f"/api/v1/{query}"))
     assert problem["errors"][field][0].startswith(message)
 
 
@@ -271,5 +277,5 @@ def test_parameters_of_a_release(signed, query, status, message):
 @pytest.mark.parametrize("path", [
     "nothing", "wells/abc", "wells/99999999999999999999", "jobs/1", "releases/1/data/more", "projects/no such",
 ])  # fmt: skip
-def test_addresses_that_are_not_there(scene, path):
-    assert told(client_for(scene, "interpreter").get(f"/api/v1/{path}"), 404)["code"] == "not_found"
+def test_addresses_that_are_not_there(bare, path):
+    assert told(client_for(bare, "interpreter").get(f"/api/v1/{path}"), 404)["code"] == "not_found"

@@ -37,14 +37,17 @@ def test_results_are_the_long_rows_of_todays_data(scene, client):
     assert not listed
 
 
-@pytest.mark.parametrize(("query", "count"), [
+FILTERED = [
     ({"well": "Quill 1"}, 15), ({"well": "quill  1"}, 15), ({"analyte": "TMAX"}, 6), ({"analyte": "tmax"}, 6),
     ({"method": "carbon"}, 6), ({"formation": "upper shale"}, 20), ({"top_m__gte": 2010}, 20),
     ({"base_m__lte": 2015}, 20), ({"top_m__gte": 2010, "base_m__lte": 2015}, 10), ({"verdict": "undecided"}, 30),
     ({"state": "accepted"}, 0), ({"well": "Quill 2", "analyte": "TOC", "top_m__gte": 2020}, 1), ({"superseded": "true"}, 0),
-])  # fmt: skip
-def test_results_by_filter(client, query, count):
-    assert len(rows(client, "results", **query)) == count
+]  # fmt: skip
+
+
+def test_results_by_filter(client):
+    for query, count in FILTERED:
+        assert len(rows(client, "results", **query)) == count, query
 
 
 def test_results_by_verdict(scene, client):
@@ -64,14 +67,14 @@ def test_superseded_results_stay_readable(scene, client):
     assert client.get(f"/api/v1/results/{old.pk}").json()["value_reported"] == old.value_reported
 
 
-@pytest.mark.parametrize("route", ["projects", "wells", "samples", "analyses", "results", "uploads", "releases"])
-def test_what_changed_since_tomorrow_is_nothing(signed, route):
-    release_of(signed)
+def test_what_changed_since_tomorrow_is_nothing(signed):
+    one_of_everything(signed, release_of(signed))
     client = client_for(signed, "geochemist")
     tomorrow = (timezone.now() + timedelta(days=1)).isoformat()
     yesterday = (timezone.now() - timedelta(days=1)).date().isoformat()
-    assert rows(client, route, changed_since=tomorrow) == []
-    assert rows(client, route, changed_since=yesterday) == rows(client, route)
+    for route in (route for route in LISTS if route != "rule-sets"):
+        assert rows(client, route, changed_since=tomorrow) == [], route
+        assert rows(client, route, changed_since=yesterday) == rows(client, route), route
 
 
 def test_a_plus_that_became_a_blank_is_understood(client):
@@ -79,25 +82,22 @@ def test_a_plus_that_became_a_blank_is_understood(client):
     assert answer.status_code == 200
 
 
-@pytest.mark.parametrize("route", LISTS)
-def test_every_list_can_be_cut_to_a_project(signed, route):
-    things = one_of_everything(signed, release_of(signed))
-    client = client_for(signed, "geochemist")
-    listed = rows(client, route, project=things.scene.project.slug)
-    assert listed
-    assert {row.get("project", row.get("slug")) for row in listed} <= {signed.project.slug, None}
-
-
-@pytest.mark.parametrize("route", LISTS)
-def test_every_list_has_a_row_for_each_thing(signed, route):
-    """The row of a list and the thing at its own address say the same."""
+def test_every_list_can_be_cut_to_a_project(signed):
     one_of_everything(signed, release_of(signed))
     client = client_for(signed, "geochemist")
-    if route == "audit":
-        return
-    for row in rows(client, route)[:3]:
-        alone = client.get(f"/api/v1/{route}/{row.get('id', row.get('slug'))}").json()
-        assert {name: alone[name] for name in row} == row
+    for route in LISTS:
+        listed = rows(client, route, project=signed.project.slug)
+        assert listed, route
+        assert {row.get("project", row.get("slug")) for row in listed} <= {signed.project.slug, None}
+
+
+def test_the_row_of_a_list_and_the_thing_at_its_own_address_say_the_same(signed):
+    one_of_everything(signed, release_of(signed))
+    client = client_for(signed, "geochemist")
+    for route in LISTS:
+        for row in rows(client, route)[:3] if route != "audit" else []:
+            alone = client.get(f"/api/v1/{route}/{row.get('id', row.get('slug'))}").json()
+            assert {name: alone[name] for name in row} == row
 
 
 def test_pages_are_stable_while_rows_are_added(scene, client):

@@ -35,17 +35,16 @@ ANALYTES = {
 }  # fmt: skip
 
 
-def analyte(code: str) -> Analyte:
-    """The analyte as the catalogue has it, or made here."""
-    unit, method, inputs = ANALYTES[code]
-    owner, _ = Method.objects.get_or_create(code=method, defaults={"name": method})
-    order = list(ANALYTES).index(code)
-    made, _ = Analyte.objects.get_or_create(
-        code=code,
-        project=None,
-        defaults={"name": code, "unit": unit, "method": owner, "inputs": inputs, "order": order},
-    )
-    return made
+def analytes() -> dict[str, Analyte]:
+    """The analytes as the catalogue has them, or made here."""
+    held = {analyte.code: analyte for analyte in Analyte.objects.filter(project=None, code__in=ANALYTES)}
+    for order, (code, (unit, method, inputs)) in enumerate(ANALYTES.items()):
+        if code not in held:
+            owner, _ = Method.objects.get_or_create(code=method, defaults={"name": method})
+            held[code] = Analyte.objects.create(
+                code=code, name=code, unit=unit, method=owner, inputs=inputs, order=order
+            )  # fmt: skip
+    return held
 
 
 @dataclass
@@ -56,6 +55,9 @@ class Scene:
     people: dict[str, User]
     sets: list[ReviewSet] = field(default_factory=list)
     files: int = 0
+    methods: dict[str, Method] = field(default_factory=dict)
+    columns: dict[tuple[int, int], SourceColumn] = field(default_factory=dict)
+    analytes: dict[str, Analyte] = field(default_factory=dict)
 
     def person(self, role: str) -> User:
         return self.people[role]
@@ -100,25 +102,36 @@ class Scene:
     ) -> Analysis:
         """One analysis with its results; ``values``: analyte -> number, or text with a qualifier ("<0.05")."""
         table, line = at
-        owner, _ = Method.objects.get_or_create(code=method, defaults={"name": method})
         made = Analysis.objects.create(
-            project=self.project, sample=sample, method=owner, report=table.report, table=table, line=line,
-            laboratory=table.report.laboratory, replicate=replicate,
+            project=self.project, sample=sample, method=self.method(method), report=table.report, table=table,
+            line=line, laboratory=table.report.laboratory, replicate=replicate,
         )  # fmt: skip
-        for code, given in values.items():
-            text = str(given)
-            column, _ = SourceColumn.objects.get_or_create(
-                table=table, line=list(ANALYTES).index(code) + 4 + 10 * (method == "carbon"),
-                defaults={"header": code, "field": code, "unit_reported": ANALYTES[code][0]},
-            )  # fmt: skip
-            qualifier = text[0] if text[0] in "<>~" else ""
-            number = text.lstrip("<>~")
-            Result.objects.create(
-                analysis=made, analyte=analyte(code), column=column, qualifier=qualifier, value_reported=text,
-                value=float(number) if number else None,
-            )  # fmt: skip
+        Result.objects.bulk_create(
+            self._result(made, code, str(given), self.column(table, code, method)) for code, given in values.items()
+        )
         ReviewItem.objects.create(review_set=held, analysis=made)
         return made
+
+    def method(self, code: str) -> Method:
+        if code not in self.methods:
+            self.methods[code], _ = Method.objects.get_or_create(code=code, defaults={"name": code})
+        return self.methods[code]
+
+    def column(self, table: SourceTable, code: str, method: str) -> SourceColumn:
+        line = list(ANALYTES).index(code) + 4 + 10 * (method == "carbon")
+        if (table.pk, line) not in self.columns:
+            self.columns[table.pk, line] = SourceColumn.objects.create(
+                table=table, line=line, header=code, field=code, unit_reported=ANALYTES[code][0]
+            )
+        return self.columns[table.pk, line]
+
+    def _result(self, made: Analysis, code: str, text: str, column: SourceColumn) -> Result:
+        self.analytes = self.analytes or analytes()
+        number = text.lstrip("<>~")
+        return Result(
+            analysis=made, analyte=self.analytes[code], column=column, qualifier=text[0] if text[0] in "<>~" else "",
+            value_reported=text, value=float(number) if number else None,
+        )  # fmt: skip
 
     def accept(self, held: ReviewSet, rejected: dict[int, str] | None = None) -> None:
         """Accept everything in the set but ``rejected`` (result id -> reason)."""
