@@ -75,7 +75,7 @@ def stop_worker() -> None:
 
     from labdata.jobs.runner import CURRENT  # noqa: PLC0415
 
-    state.should_stop = 0
+    state.should_stop = 0  # type: ignore[assignment]
     CURRENT.close()
     _until_idle(FINISH_SECONDS)
     if context := CURRENT.context:

@@ -73,7 +73,7 @@ def _existing(kind: str, project: Project | None, idem_key: str | None, dedupe_k
 def publish(job_id: UUID) -> bool:
     """Tell the workers about a job. Returns whether the broker took it; the sweeper publishes again if not."""
     try:
-        run_job.apply_async(args=[str(job_id)], retry=False)
+        run_job.apply_async(args=(str(job_id),), retry=False)
     except Exception as error:  # noqa: BLE001 - whatever ails the broker, the job row stands and is swept up
         logger.warning("job %s not published yet: %s: %s", job_id, type(error).__name__, error)
         return False

@@ -31,8 +31,8 @@ class Channel(virtual.Channel):
 
     def _open_file(self) -> sqlite3.Connection:
         if self._file is None:
-            path = self.connection.client.transport_options["path"]
-            file = sqlite3.connect(path, timeout=BUSY_SECONDS, isolation_level=None, check_same_thread=False)
+            options: dict[str, Any] = self.connection.client.transport_options  # type: ignore[union-attr,assignment]
+            file = sqlite3.connect(options["path"], timeout=BUSY_SECONDS, isolation_level=None, check_same_thread=False)
             for statement in ("PRAGMA journal_mode=WAL", "PRAGMA synchronous=OFF", TABLE, INDEX):
                 file.execute(statement)
             self._file = file
@@ -44,7 +44,7 @@ class Channel(virtual.Channel):
     def _put(self, queue: str, message: dict[str, Any], **_: Any) -> None:
         self._open_file().execute("INSERT INTO message (queue, payload) VALUES (?, ?)", (queue, json.dumps(message)))
 
-    def _get(self, queue: str) -> dict[str, Any]:
+    def _get(self, queue: str, timeout: float | None = None) -> dict[str, Any]:
         """The oldest message, deleted as it is read. Raises Empty."""
         file = self._open_file()
         first = "SELECT id, payload FROM message WHERE queue = ? ORDER BY id LIMIT 1"

@@ -15,6 +15,7 @@ import psycopg
 
 from labdata.env import CHECKOUT
 
+BUSY = "SELECT worker FROM labdata_job WHERE state = 'running'"
 LEASE_SECONDS, SWEEP_SECONDS = 2, 0.5
 
 
@@ -117,4 +118,26 @@ def kill_at_random(fleet, processes, start, *, seed, kills, first, between):
         processes[victim] = start()
         done += 1
         time.sleep(dice.uniform(*between))
+    return done
+
+
+def kill_busy_workers(fleet, workers, *, seed, kills, longest=0.3, seconds=60):
+    """Kill whichever worker has a job, at a random moment of it, ``kills`` times while work is left.
+
+    For jobs so short that a blind kill seldom meets one. Killed workers are replaced at once.
+    """
+    dice = random.Random(seed)
+    latest = time.monotonic() + seconds
+    done = 0
+    while done < kills and fleet.unsettled() and time.monotonic() < latest:
+        busy = {int(name.rsplit(":", 1)[1]) for (name,) in fleet.rows(BUSY)}
+        victims = [place for place, worker in enumerate(workers) if worker.pid in busy]
+        if not victims:
+            time.sleep(0.01)
+            continue
+        time.sleep(dice.uniform(0, longest))
+        place = dice.choice(victims)
+        fleet.kill(workers[place])
+        workers[place] = fleet.worker()
+        done += 1
     return done
