@@ -3,6 +3,7 @@
 import time
 from collections.abc import Callable
 from dataclasses import dataclass, field
+from itertools import zip_longest
 
 from labdata.intake import values, workbook
 from labdata.intake.columns import Column, Mapping, map_columns
@@ -151,6 +152,16 @@ class _FileReader:
 
 
 def _no_table(name: str, layouts: list[tuple[Sheet, Layout]], findings: Findings) -> None:
+    for sheet, _ in layouts:
+        if _lies_on_its_side(sheet):
+            findings.error(
+                "table_on_its_side",
+                f"In sheet «{sheet.name}» of «{name}» the samples run along the columns.",
+                sheet=sheet.name,
+                cell="A1",
+                remedy="Turn the table (paste it transposed), so that each sample has a row.",
+            )
+            return
     seen = next((line for _, layout in layouts for line in layout.title), [])
     shown = " | ".join(seen)[:200]
     findings.error(
@@ -162,6 +173,14 @@ def _no_table(name: str, layouts: list[tuple[Sheet, Layout]], findings: Findings
         remedy="A table needs a header row that names a sample or depth and at least one analyte, "
         "such as Depth (m), TOC (wt%), S2 (mg/g).",
     )
+
+
+def _lies_on_its_side(sheet: Sheet) -> bool:
+    """True when the sheet would hold a table if rows and columns were exchanged."""
+    if not sheet.rows or len(sheet.rows) > 400:
+        return False
+    turned = [list(column) for column in zip_longest(*sheet.rows, fillvalue="")]
+    return any(table.rows for table in find_tables(Sheet(sheet.name, turned)).tables)
 
 
 def _take_table(table: Table, facts: Facts, findings: Findings) -> tuple[PreparedTable, Mapping]:

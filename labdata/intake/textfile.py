@@ -22,7 +22,7 @@ def decode(name: str, content: bytes) -> tuple[str, str]:
     for bom, encoding in _BOMS:
         if content.startswith(bom):
             return content.decode(encoding, errors="replace").lstrip("\ufeff"), encoding
-    if b"\x00" in content[:4096]:
+    if b"\x00" in content:
         raise UnreadableFile(
             f"«{name}» is neither a table of text nor a workbook: it holds binary data.",
             remedy="Send .csv, .tsv, .txt, .xlsx, .xlsm, .xls or .ods.",

@@ -3,19 +3,21 @@
 import io
 import re
 import zipfile
+import zlib
 from dataclasses import dataclass, field
 from datetime import date, datetime, time, timedelta
 from typing import Any
 
 from python_calamine import CalamineError, CalamineWorkbook, SheetVisibleEnum
 
-from labdata.intake import sheetxml, textfile
+from labdata.intake import apart, sheetxml, textfile
 from labdata.intake.errors import UnreadableFile
 from labdata.intake.values import number_text
 
 MAX_BYTES = 200 * 1024 * 1024
 MAX_UNPACKED = 1024 * 1024 * 1024
 MAX_RATIO = 300
+APART_BYTES = 128 * 1024 * 1024  # unpacked; what is larger is read in a child process
 MAX_CELLS = 40_000_000
 
 Cell = Any  # str, float, int, bool, date, datetime, time, timedelta; "" when empty
@@ -72,7 +74,7 @@ def address(row: int, column: int) -> str:
 def cell_text(cell: Cell) -> str:
     """A cell as reported, as text."""
     if isinstance(cell, str):
-        return cell.strip()
+        return cell.replace("\x00", "").strip()
     if isinstance(cell, bool):
         return "TRUE" if cell else "FALSE"
     if isinstance(cell, (int, float)):
@@ -87,6 +89,18 @@ def cell_text(cell: Cell) -> str:
 def read(name: str, content: bytes) -> Workbook:
     """Every sheet of the file. Raises UnreadableFile naming the file and what is wrong with it."""
     _refuse_hopeless(name, content)
+    if content[:8] == _OLE and len(content) > APART_BYTES // 4:
+        return apart.read_apart(name, content)
+    if content.startswith(b"PK") and zipfile.is_zipfile(io.BytesIO(content)):
+        with zipfile.ZipFile(io.BytesIO(content)) as archive:
+            _refuse_bomb(name, content, archive.infolist())
+            if sum(entry.file_size for entry in archive.infolist()) > APART_BYTES:
+                return apart.read_apart(name, content)
+    return read_here(name, content)
+
+
+def read_here(name: str, content: bytes) -> Workbook:
+    """As ``read``, in this process whatever the size."""
     if content.startswith(b"PK"):
         return _zipped(name, content)
     if content.startswith(_OLE):
@@ -146,6 +160,12 @@ def _zipped(name: str, content: bytes) -> Workbook:
             raise UnreadableFile(
                 f"«{name}» is a zip archive, not a workbook.", remedy="Unpack it and send the tables in it.", file=name
             )
+        if damaged := _damaged(archive):
+            raise UnreadableFile(
+                f"«{name}» is a damaged or incomplete workbook ({damaged} in it is not whole).",
+                remedy="Send the file again.",
+                file=name,
+            )
         book = _calamine(name, content, "ods" if "content.xml" in names else "xlsx")
         if "xl/workbook.xml" in names:
             sheetxml.add_formats(archive, book.sheets)
@@ -160,6 +180,14 @@ def _refuse_bomb(name: str, content: bytes, entries: list[zipfile.ZipInfo]) -> N
             remedy="Save the workbook again with only its used cells, or send it as .csv.",
             file=name,
         )
+
+
+def _damaged(archive: zipfile.ZipFile) -> str:
+    """The first part that does not unpack to its declared size and checksum, or ""."""
+    try:
+        return archive.testzip() or ""
+    except (zipfile.BadZipFile, EOFError, zlib.error, OSError, NotImplementedError):
+        return "a part"
 
 
 def _encrypted_ods(archive: zipfile.ZipFile, names: set[str]) -> bool:

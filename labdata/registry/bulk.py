@@ -35,15 +35,19 @@ def insert(model: type[models.Model], columns: Sequence[str], rows: Iterable[tup
     names = ", ".join(connection.ops.quote_name(name) for name in columns)
     with connection.cursor() as cursor:
         if connection.vendor == "postgresql":
-            with cursor.cursor.copy(f"COPY {table} ({names}) FROM STDIN") as copy:
-                for row in rows:
-                    copy.write_row(row)
+            _copy(cursor, f"COPY {table} ({names}) FROM STDIN", rows)
             return
         marks = ", ".join("?" for _ in columns)
         statement = f"INSERT INTO {table} ({names}) VALUES ({marks})"
         source = iter(rows)
         while chunk := list(islice(source, CHUNK)):
             _raw_executemany(cursor, statement, chunk)
+
+
+def _copy(cursor: Any, statement: str, rows: Iterable[tuple[Any, ...]]) -> None:
+    with connection.wrap_database_errors, cursor.cursor.copy(statement) as copy:
+        for row in rows:
+            copy.write_row(row)
 
 
 def _raw_executemany(cursor: Any, statement: str, chunk: list[tuple[Any, ...]]) -> None:

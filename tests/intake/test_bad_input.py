@@ -30,6 +30,16 @@ def half_a_workbook():
     return whole[: len(whole) // 2]
 
 
+def tampered():
+    """A workbook whose sheet does not have the checksum that it declares."""
+    whole = archive({"xl/workbook.xml": "<workbook/>", "xl/worksheets/sheet1.xml": "1234567890"})
+    stored = io.BytesIO()
+    with zipfile.ZipFile(io.BytesIO(whole)) as old, zipfile.ZipFile(stored, "w", zipfile.ZIP_STORED) as new:
+        for name in old.namelist():
+            new.writestr(name, old.read(name))
+    return stored.getvalue().replace(b"1234567890", b"1234567891")
+
+
 FILES = {
     "empty": (b"", "«r.csv» is empty (0 bytes)."),
     "blanks only": (b" \n , \n", "«r.csv» holds nothing but blanks."),
@@ -38,6 +48,7 @@ FILES = {
     "an archive": (archive({"a.txt": "x"}), "«r.csv» is a zip archive, not a workbook."),
     "cut off": (half_a_workbook(), "«r.csv» is a damaged or incomplete workbook."),
     "zip bomb": (archive({"xl/workbook.xml": "x" * 60_000_000}), "«r.csv» would unpack to 60 MB from 0.06 MB; it is not read."),
+    "damaged inside": (tampered(), "«r.csv» is a damaged or incomplete workbook (xl/worksheets/sheet1.xml in it is not whole)."),
     "damaged .xls": (OLE + b"\0" * 600, "«r.csv» is a damaged or incomplete workbook (Cannot detect file format)."),
     "password": (OLE + b"\0" * 100 + "EncryptedPackage".encode("utf-16-le"), "«r.csv» is protected with a password."),
     "a web page": (b"<html><table></table></html>", "«r.csv» is a web page or XML, whatever its name says."),
@@ -59,6 +70,7 @@ def test_a_file_that_is_no_table_is_refused(content, message):
 TABLES = {
     "no header": ("1,2,3\n4,5,6\n", "no_table", "A1", "No table of results was found in «r.csv»; its first line reads «1 | 2 | 3»."),
     "a letter": ("Dear colleague,\nplease find\n", "no_table", "A1", "No table of results was found in «r.csv»; its first line reads «Dear colleague»."),
+    "on its side": ("Sample,A,B\nDepth (m),10,11\nTOC (wt%),1,2\nS2 (mg/g),3,4\n", "table_on_its_side", "A1", "In sheet «» of «r.csv» the samples run along the columns."),
     "no rows": (HEAD, "no_rows", "A1", "The table at A1:D1 has a header and no rows."),
     "no sample": ("TOC (wt%),S2 (mg/g)\n1,2\n", "no_sample_column", "A1", "The table at A1:B2 has neither a sample nor a depth column; its headers are «TOC (wt%)», «S2 (mg/g)»."),
     "wrong unit": ("Sample,Depth (m),Tmax (°F)\nA,10,800\n", "unit_not_convertible", "C1", "Column C «Tmax (°F)» is in degF, which does not convert to degC."),
@@ -164,6 +176,24 @@ def test_a_file_without_a_well_asks_for_it():
     answer = entry(project, HEAD + "A,10,1,1\n", well="")
     assert [(f["id"], f["options"]) for f in findings_of(answer, "question")] == [("well", ["Quill 1"])]
     assert entry(project, HEAD + "A,10,1,1\n", well="", answers={"well": "Quill 1"})["outcome"] == "imported"
+
+
+def test_a_large_workbook_is_read_in_a_process_of_its_own(monkeypatch):
+    monkeypatch.setattr("labdata.intake.workbook.APART_BYTES", 1)
+    rows = [["Sample", "Depth (m)", "TOC (wt%)"], ["A", 10, 1.5]]
+    answer = entry(ProjectFactory(), workbook(lambda book: [book.active.append(row) for row in rows]), "x.xlsx")
+    assert (answer["outcome"], answer["counts"]["results"]) == ("imported", 1)
+
+
+def test_a_reader_that_exceeds_its_limits_refuses_the_file(monkeypatch):
+    monkeypatch.setattr("labdata.intake.workbook.APART_BYTES", 1)
+    monkeypatch.setattr("labdata.intake.apart.SECONDS", 0.01)
+    answer = entry(ProjectFactory(), workbook(lambda book: book.active.append(["x"])), "x.xlsx")
+    (finding,) = answer["findings"]
+    assert (
+        finding["message"]
+        == "«x.xlsx» could not be read within the limits of memory and time (it took more than 0.01 s)."
+    )
 
 
 def test_who_may_not_upload_is_told_so():
