@@ -17,7 +17,7 @@ CHECKS = Path(__file__).parent / "review_modules"
 def harness(request: HttpRequest) -> HttpResponse:
     """A page that runs the checks and leaves their outcome in its text."""
     return HttpResponse(
-        '<!doctype html><title>checks</title><main id="outcome"></main>'
+        '<!doctype html><title>checks</title><link rel="icon" href="data:,"><main id="outcome"></main>'
         '<script type="module" src="/module-checks/checks.js"></script>'
     )
 

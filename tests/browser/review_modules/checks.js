@@ -100,7 +100,9 @@ const STATES = Object.keys(MARKERS);
 
 function stamped(look, chosen = false) {
   const canvas = Object.assign(document.createElement("canvas"), { width: 40, height: 40 }), pen = canvas.getContext("2d");
-  new Marks(STATES, MARKERS, "#0072b2", 4).stamp(pen, look, 20, 20, chosen);
+  const points = new Points();
+  points.push(20, 20, 0, 0, look);
+  new Marks(STATES, MARKERS, "#0072b2", 4).stampAll(pen, points, chosen ? [1] : null);
   const { data } = pen.getImageData(0, 0, 40, 40);
   let ink = "";
   for (let at = 0; at < data.length; at += 4) ink += data[at + 3] > 100 && Math.min(data[at], data[at + 1], data[at + 2]) < 200 ? 1 : 0;

@@ -71,11 +71,7 @@ export class CrossPlot {
 
   /** All marks, or those of the rows that are on. */
   stamp(pen, only) {
-    if (!this.box) return;
-    pen.save();
-    this.#clip(pen);
-    this.marks.stampAll(pen, this.points, only);
-    pen.restore();
+    if (this.box) this.marks.stampAll(pen, this.points, only);
   }
 
   #clip(pen) {
@@ -92,10 +88,10 @@ export class CrossPlot {
   }
 
   #place() {
-    const { x, y, points } = { x: this.x, y: this.y, points: new Points() };
+    const { x, y } = this, points = new Points(), [left, right] = ordered(this.viewX), [low, high] = ordered(this.viewY);
     for (let row = 0; row < x.value.length; row += 1) {
       const u = x.value[row], v = y.value[row];
-      if (u === u && v === v && !(x.log && u <= 0) && !(y.log && v <= 0)) {
+      if (u >= left && u <= right && v >= low && v <= high) {
         points.push(this.scaleX.to(u), this.scaleY.to(v), row, 0, lookOf(Math.max(x.state[row], y.state[row]), this.#arrow(row)));
       }
     }
@@ -144,6 +140,8 @@ export class CrossPlot {
     this.tell(hit < 0 ? null : { row: this.points.row[hit], columns: [this.x, this.y], x: this.points.x[hit], y: this.points.y[hit], box: this.surface.box });
   }
 }
+
+function ordered([a, b]) { return a < b ? [a, b] : [b, a]; }
 
 function said(column) {
   return `${column.computed ? ", computed" : ""} [${column.unit}]`;

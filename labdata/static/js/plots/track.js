@@ -75,18 +75,7 @@ export class TrackStrip {
   }
 
   /** All marks, or those of the rows that are on. */
-  stamp(pen, only) {
-    pen.save();
-    this.#clip(pen);
-    this.marks.stampAll(pen, this.points, only);
-    pen.restore();
-  }
-
-  #clip(pen) {
-    pen.beginPath();
-    pen.rect(this.box.left - 2, this.box.top - 4, this.box.right - this.box.left + 4, this.box.bottom - this.box.top + 8);
-    pen.clip();
-  }
+  stamp(pen, only) { this.marks.stampAll(pen, this.points, only); }
 
   /** Depth axis, formations, cores and muds left of the tracks. */
   #behind(pen) {
