@@ -81,6 +81,12 @@ def hi_slip(table: pd.DataFrame) -> pd.DataFrame:
     return table
 
 
+def pi_slip(table: pd.DataFrame) -> pd.DataFrame:
+    """The decimal point of one production index stands a place too far right."""
+    table.at[PI_ROW, "pi"] = round(10 * _number(table, PI_ROW, "pi"), 2)
+    return table
+
+
 def depth_digits(table: pd.DataFrame) -> pd.DataFrame:
     """Two digits of one plug depth changed places, as a typist does it."""
     table.at[DEPTH_ROW, "top"] = _swapped(_number(table, DEPTH_ROW, "top"), 2)
@@ -137,6 +143,7 @@ OILY = tuple(f"T1-{number:03d}" for number in range(133, 151))
 FIBRE = ("SA-040", "SA-041")
 NOISE = ("SA-005", "SA-011")
 HI_ROW = "T1-096"
+PI_ROW = "SA-034"
 DEPTH_ROW = "F1-049"
 DEEP_ROW = "SA-072"
 TWICE = ("T2-044", "T2-045")
@@ -155,6 +162,8 @@ FAULTS = (
           SALLOWBY_1, NOISE, ("s2_floor_for_tmax",), REPORT, tmax_of_noise),
     Fault("hi_slip", "Two digits of a reported hydrogen index changed places.",
           TARROW_1, (HI_ROW,), ("index_recalc",), REPORT, hi_slip, mended=2),
+    Fault("pi_slip", "A reported production index ten times too large.",
+          SALLOWBY_1, (PI_ROW,), ("index_recalc",), REPORT, pi_slip),
     Fault("depth_digits", "Two digits of a core plug's depth changed places.",
           FENNICK_1, (DEPTH_ROW,), ("sample_sequence",), REPORT, depth_digits),
     Fault("below_total_depth", "Cuttings labelled deeper than the well's total depth.",

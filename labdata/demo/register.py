@@ -26,10 +26,14 @@ from labdata.models import (
     WellAlias,
 )
 from labdata.registry.names import name_key
+from qc.models import RuleSet
+from qc.rulesets import new_version
 
 SENT = datetime(2026, 1, 12, 10, 30, tzinfo=UTC)
 CORE_STORE = "Norrowland core store, rack 14"
 CAUTION = "Cuttings from below 2520 m were drilled with oil-based mud: wash with solvent before pyrolysis or say so."
+OWN_LIMITS = {"toc_floor_for_indices": {"toc_warn": 0.4}}
+OWN_REASON = "Duplicates of both laboratories agree within 10 % down to 0.4 wt% TOC in this basin."
 # consignment number, laboratory, wells, methods reported, methods awaited, cautions
 CONSIGNMENTS = (
     ("QB-C-001", BRACKWATER, ("Tarrow 1",), ("pyrolysis", "reflectance"), ("isotopes",), CAUTION),
@@ -91,6 +95,12 @@ def _along(well: Well, plan: DemoWell) -> Iterator[models.Model]:
         )  # fmt: skip
     for depth, inclination, azimuth in plan.survey:
         yield SurveyStation(well=well, md_m=depth, inclination_deg=inclination, azimuth_deg=azimuth)
+
+
+def set_up_rules(project: Project, geochemist: User) -> None:
+    """The project's own version of the rules, once: indices are warned of from 0.4 wt% TOC down instead of 0.5."""
+    if not RuleSet.objects.filter(project=project).exists():
+        new_version(project=project, changes=OWN_LIMITS, author=geochemist, reason=OWN_REASON)
 
 
 @transaction.atomic

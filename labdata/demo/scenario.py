@@ -50,6 +50,7 @@ def set_stage(say: Say, *, must_sign: bool) -> Stage:
     project = people.set_up_project()
     users = people.set_up_people(project, password, renew=given or must_sign)
     register.set_up_registry(project)
+    register.set_up_rules(project, users["geochemist"])
     made = not given and (must_sign or known < len(people.PEOPLE))
     return Stage(project, users, password, made, say)
 

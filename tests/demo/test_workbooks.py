@@ -80,6 +80,12 @@ def test_reported_hydrogen_index_does_not_follow_from_its_peaks(tables):
     assert abs(row["HI"] - 100 * float(row["S2"]) / row["TOC"]) > 50
 
 
+def test_reported_production_index_is_ten_times_what_its_peaks_give(tables):
+    row = tables["Sallowby 1"].loc[faults.PI_ROW]
+    assert row["PI"] == pytest.approx(10 * float(row["S1"]) / (float(row["S1"]) + float(row["S2"])), abs=0.06)
+    assert row["PI"] <= 1
+
+
 def test_digits_of_a_depth_changed_places(tables):
     depths = tables["Fennick 1"]["Top"]
     wrong = depths.loc[faults.DEPTH_ROW]

@@ -35,6 +35,9 @@ class Command(ServiceCommand):
             if options["json"] and not self._announced:
                 self._print({"error": refusal.as_dict()})
             sys.exit(1)
+        except KeyboardInterrupt:
+            self.stderr.write("Stopped before the end; the same command continues.")
+            sys.exit(130)
 
     def _once(self, *, as_json: bool) -> None:
         from labdata.demo import scenario  # noqa: PLC0415 - models are not needed to read the arguments
