@@ -65,9 +65,9 @@ def map_columns(table: Table, findings: Findings) -> Mapping:
     """Give every column its field; ask where two columns claim the same one and cannot be told apart."""
     known, unknown = _first_reading(table)
     columns = [_column(head, guess) for head, guess in known]
-    sulfur = _sulfur_by_combustion(unknown, columns)
-    columns += sulfur
-    unknown = [head for head in unknown if head.index not in {column.index for column in sulfur}]
+    told = _sulfur_by_combustion(unknown, columns) + _readings_count(unknown, columns)
+    columns += told
+    unknown = [head for head in unknown if head.index not in {column.index for column in told}]
     by_field: dict[str, list[Column]] = defaultdict(list)
     for column in columns:
         by_field[column.field].append(column)
@@ -149,6 +149,18 @@ def _sulfur_by_combustion(unknown: list[Head], columns: list[Column]) -> list[Co
             guess = Guess("TS", units.parse(unit_text), unit_text, 0.85, reason, tuple(name))
             found.append(_column(head, guess))
     return found
+
+
+def _readings_count(unknown: list[Head], columns: list[Column]) -> list[Column]:
+    """``N`` right after reflectance or its standard deviation is the number of readings."""
+    after = {column.index + 1 for column in columns if column.method == "reflectance"}
+    if any(column.field == "RO_N" for column in columns):
+        return []
+    return [
+        _column(head, Guess("RO_N", "count", "", 0.8, f"«{head.text}» beside the reflectance counts its readings"))
+        for head in unknown
+        if fold(head.text) == "n" and head.index in after
+    ][:1]
 
 
 def _settle(

@@ -13,6 +13,7 @@ from labdata.intake.fields import element_symbols, field_types, synonyms
 NAME = "NAME"  # a header that says only "Name" or "ID": well or sample, told by its values
 _NAME_WORDS = frozenset({"name", "id", "no", "nr", "number", "code"})
 _BRACKETS = re.compile(r"[(\[{]([^()\[\]{}]*)[)\]}]")
+_NESTED = re.compile(r"\([^()]*\(")
 _BARE_UNITS = frozenset(
     {"%", "wt%", "ug/g", "ng/g", "permil", "ft", "m", "degC", "mg/g", "mg/g TOC", "mD", "API", "g/cm3", "fraction"}
 )
@@ -120,8 +121,11 @@ def _laboratory(base: str) -> Guess | None:
 
 def _without_formula(text: str) -> str:
     """``PI (S1/(S1+S2))`` is ``PI``: brackets within brackets are a formula, the name stands before."""
-    before, mark, inside = text.partition("(")
-    nested = bool(mark) and "(" in inside and before.strip() != "" and fold(before) in _names()
+    before, equals, _ = text.partition("=")
+    if equals and fold(before) in _names():
+        return before.strip()
+    before, mark, _ = text.partition("(")
+    nested = bool(mark) and _NESTED.search(text) is not None and before.strip() != "" and fold(before) in _names()
     return before.strip() if nested else text
 
 
@@ -143,7 +147,8 @@ def _split(text: str) -> tuple[str, str, tuple[str, ...]]:
 
 def _bare_unit(text: str) -> tuple[str, str]:
     """A unit that stands before or after the name without brackets: ``Al %``, ``TOC, wt.%``, ``% CaCO3``, ``depth ft``."""
-    tokens = re.sub(r"(?<=%)(?=[A-Za-z])|[,;:](?=\s)", " ", text).split()
+    spaced = re.sub(r"(?<=%)(?=[A-Za-z])|(?<=[A-Za-z])(?=%$)|[,;:](?=\s|%)", " ", text)
+    tokens = re.sub(r"\bin (?=\w+$)", "", spaced).split()
     for length in (4, 3, 2, 1):
         if len(tokens) > length:
             tail, head = tokens[-length:], " ".join(tokens[:-length])
@@ -187,27 +192,30 @@ def _element(base: str, unit: str, many_elements: bool) -> str:
 @lru_cache(maxsize=20_000)
 def _with_words(base: str, unit: str, unit_text: str, words: tuple[str, ...]) -> Guess | None:
     """A code with a laboratory's own word before or after it: ``ABC TOC``, ``TC_abc``."""
-    tokens = base.split()
+    tokens = re.sub(r"(?<=\w)-(?=\w\w\w)", " ", base).split()
     if not 2 <= len(tokens) <= 4:
         return None
-    refused = set(synonyms()["words"]["another_quantity"])
     for start, stop in _parts(len(tokens)):
         extra = [token.casefold().strip(".,:;-") for token in (*tokens[:start], *tokens[stop:])]
         code = _names().get(fold(" ".join(tokens[start:stop])))
         if code is None or not field_types()[code].is_analyte or len(fold(" ".join(tokens[start:stop]))) < 2:
             continue
-        if any(
-            word in refused
-            or word.isdigit()
-            or "/" in word
-            or (fold(word) in _names() and field_types()[_names()[fold(word)]].is_analyte)
-            for word in extra
-        ):
+        if any(_other_quantity(word) for word in extra):
             continue
         return Guess(
             code, unit, unit_text, 0.85, f"{code} with the laboratory's word «{' '.join(extra)}»", (*words, *extra)
         )
     return None
+
+
+def _other_quantity(word: str) -> bool:
+    """True for a word that makes something else of a code: ``TOC sd``, ``TOC/N``; False for a procedure or a name."""
+    words = synonyms()["words"]
+    if fold(word) in {fold(known) for known in (*words["pyrolysis"], *words["combustion"])}:
+        return False
+    field = _names().get(fold(word))
+    analyte = field is not None and field_types()[field].is_analyte
+    return word in words["another_quantity"] or word.isdigit() or "/" in word or analyte
 
 
 def _parts(length: int) -> list[tuple[int, int]]:

@@ -62,6 +62,7 @@ class _FileReader:
     directory: WellDirectory
     whole: Facts = field(default_factory=Facts)
     named: list[tuple[Row, str, str]] = field(default_factory=list)
+    sheets_with_tables: int = 0
 
     @property
     def findings(self) -> Findings:
@@ -76,6 +77,7 @@ class _FileReader:
         if not any(layout.tables for _, layout in layouts):
             _no_table(self.request.name, layouts, self.findings)
             return
+        self.sheets_with_tables = sum(1 for _, layout in layouts if layout.tables)
         self.whole = read_title([line for _, layout in layouts for line in layout.title])
         for sheet, layout in layouts:
             self._sheet(sheet, layout)
@@ -142,13 +144,20 @@ class _FileReader:
             message = f"The well is taken from the sheet's name «{sheet.name}»."
             self.findings.note("well_from_sheet_name", message, sheet=sheet.name, remedy="Nothing to do if it is.")
             return sheet.name, ""
-        if any(finding.id == "well" for finding in self.findings.found):
-            return "", ""
+        return self._ask_well(sheet), ""
+
+    def _ask_well(self, sheet: Sheet) -> str:
+        """The well of a sheet that names none; sheet by sheet where several do not, since each may be of its own well."""
+        several = self.sheets_with_tables > 1 and "well" not in self.findings.answers
+        id_ = f"well:{sheet.name}" if several else "well"
+        if any(finding.id == id_ for finding in self.findings.found):
+            return ""
         known = sorted({well.name for well in self.directory.wells.values()})
-        message = f"«{self.request.name}» names no well."
-        remedy = "Name the well (--well, or the answer «well»)."
-        answer = self.findings.ask("well", "well_missing", message, known, free=True, sheet=sheet.name, remedy=remedy)
-        return answer or "", ""
+        message = f"Sheet «{sheet.name}» names no well." if several else f"«{self.request.name}» names no well."
+        options = [*known, sheet.name] if several and sheet.name not in known else known
+        remedy = f"Name the well ({'' if several else '--well, or '}the answer «{id_}»)."
+        answer = self.findings.ask(id_, "well_missing", message, options, free=True, sheet=sheet.name, remedy=remedy)
+        return answer or ""
 
 
 def _no_table(name: str, layouts: list[tuple[Sheet, Layout]], findings: Findings) -> None:

@@ -173,7 +173,9 @@ def _next_header(sheet: Sheet, start: int) -> Table | None:
             continue
         score, table = found
         for later in range(row + 1, min(row + MAX_HEADER_ROWS, len(sheet.rows))):
-            other = _best_header(sheet, later) if _texty(sheet.rows[later]) else None
+            if not _texty(sheet.rows[later]):
+                break  # a row of numbers is data, and what follows it is no part of this header
+            other = _best_header(sheet, later)
             if other is not None and other[0] >= score - 0.01:
                 score, table = other
         return table
@@ -308,17 +310,29 @@ def _take_rows(sheet: Sheet, table: Table) -> int:
             if _repeats(line, header):
                 table.skipped.append((row, "repeats the header"))
                 continue
-            if _best_header(sheet, row) is not None and _best_header(sheet, row)[0] >= 1.8:  # type: ignore[index]
+            note = _is_note(line)
+            if not (note and _header_follows(sheet, row, header)) and _starts_table(sheet, row):
                 return row
             if _is_units(line) and table.rows == []:
                 table.skipped.append((row, "holds units"))
                 continue
-            if _is_note(line):
+            if note:
                 table.skipped.append((row, "is a note"))
                 table.notes.append(" ".join(_line(sheet, row)))
                 continue
         table.rows.append(row)
     return len(sheet.rows)
+
+
+def _starts_table(sheet: Sheet, row: int) -> bool:
+    found = _best_header(sheet, row)
+    return found is not None and found[0] >= 1.8
+
+
+def _header_follows(sheet: Sheet, row: int, header: list[str]) -> bool:
+    """True when the next filled row repeats the header: a page break."""
+    following = next((line for line in sheet.rows[row + 1 : row + 6] if not _blank(line)), [])
+    return _repeats(following, header)
 
 
 def _blank(line: list[Cell]) -> bool:

@@ -69,7 +69,7 @@ _FACTORS: dict[str, dict[str, float]] = {
 def fold(text: str) -> str:
     """A unit text without blanks, case, accents of micro, superscripts and minus signs between letters."""
     plain = unicodedata.normalize("NFKC", text).casefold().replace("μ", "u").replace("µ", "u").replace("º", "°")
-    plain = re.sub(r"\s+", "", plain).replace("₂", "2").replace("^", "").replace("\\", "/")
+    plain = re.sub(r"[\s,]+", "", plain).replace("₂", "2").replace("^", "").replace("\\", "/")
     plain = plain.strip("[](){}.,;:_")
     plain = re.sub(r"(?<=[a-z])-(?=[a-z])", "", plain)  # mgHC/g-rock
     return re.sub(r"\*?g-1$", "/g", plain)
@@ -81,10 +81,15 @@ def parse(text: str) -> str:
     ``mg HC/g rock``, ``mgHC/g-rock`` and ``kg/t`` are ``mg/g``; ``Wt. %`` is ``wt%``; ``feet`` is ``ft``.
     """
     folded = fold(text)
-    for spelling in (folded, folded.replace(".", ""), folded.replace("per", "/"), _bare(folded)):
+    for spelling in (folded, folded.replace(".", ""), folded.replace("per", "/"), _bare(folded), _plain(folded)):
         if name := _NAMED.get(spelling):
             return name
     return ""
+
+
+def _plain(folded: str) -> str:
+    """Without letters that a wrong encoding left behind: ``â°c`` and ``?c`` are ``c``."""
+    return re.sub(r"[^a-z0-9/%.]", "", folded) if not folded.isascii() or "?" in folded else folded
 
 
 def _bare(folded: str) -> str:

@@ -47,6 +47,15 @@ from labdata.intake.headers import recognise
     ("Amostra", "SAMPLE", ""),
     ("LIMS ID", "LAB_NO", ""),
     ("API", "UWI", ""),
+    ("Depth in feet", "TOP", "ft"),
+    ("Depth (m, MD)", "TOP", "m"),
+    ("Ro,%", "RO", "%"),
+    ("TOC%", "TOC", "%"),
+    ("TOC-combustion (wt%)", "TOC", "wt%"),
+    ("Pyr. TOC (%)", "TOC", "%"),
+    ("Tmax (Â°C)", "TMAX", "degC"),
+    ("PI = S1/(S1+S2)", "PI", ""),
+    ("Fe2O3(T) (%)", "FE2O3", "%"),
 ])  # fmt: skip
 def test_a_header_is_understood(header, field, unit):
     guess = recognise(header)

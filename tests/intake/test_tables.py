@@ -255,6 +255,32 @@ def test_toc_in_percent_or_fraction_is_told_by_hi():
     assert (answer["outcome"], units["TOC"]) == ("imported", "fraction")
 
 
+@pytest.mark.django_db
+def test_a_sheet_a_well_is_asked_sheet_by_sheet():
+    def fill(book):
+        for name in ("Quill 1", "Quill 2"):
+            sheet = book.create_sheet(name)
+            for row in (["Sample", "Depth (m)", "TOC (wt%)"], ["A", 10, 1]):
+                sheet.append(row)
+
+    project, content = ProjectFactory(), workbook(fill)
+    asked = {f["id"]: f["options"] for f in findings_of(entry(project, content, "x.xlsx", well=""), "question")}
+    assert asked == {"well:Quill 1": ["Quill 1"], "well:Quill 2": ["Quill 2"]}
+    landed = land(project, content, "x.xlsx", answers={name: options[0] for name, options in asked.items()})
+    assert sorted(Sample.objects.values_list("well__name", flat=True)) == ["Quill 1", "Quill 2"]
+    assert landed.upload.answer["counts"]["wells_new"] == 2
+
+
+@pytest.mark.django_db
+def test_a_header_repeated_on_every_page_and_an_n_beside_reflectance():
+    text = (
+        "Sample,Depth (m),Ro (%),SD,N\nA,10,0.5,0.05,30\nPage 1 of 2\nSample,Depth (m),Ro (%),SD,N\nB,11,0.6,0.06,25\n"
+    )
+    answer = entry(ProjectFactory(), text)
+    fields = [column["field"] for column in answer["tables"][0]["columns"]]
+    assert (len(answer["tables"]), fields, answer["counts"]["rows"]) == (1, ["SAMPLE", "TOP", "RO", "RO_SD", "RO_N"], 2)
+
+
 @pytest.mark.parametrize(("name", "parts"), [
     ("KG-17.xlsx", ("KG-17", None, False)),
     ("KG-17_rev2.xlsx", ("KG-17", 2, False)),
