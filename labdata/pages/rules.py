@@ -4,7 +4,7 @@ from typing import Any
 
 from django import forms
 from django.contrib import messages
-from django.db.models import Count, Q, QuerySet
+from django.db.models import Count, F, Q, QuerySet
 from django.http import HttpRequest, HttpResponse
 from django.shortcuts import redirect, render
 from django.views.decorators.http import require_http_methods, require_safe
@@ -48,7 +48,7 @@ def versions(user: AnyUser, project: Project) -> QuerySet[RuleSet]:
     """The project's own versions, newest first, then those every project starts with."""
     own = visible(user, RuleSet.objects.filter(project=project)).values("pk")
     rows = RuleSet.objects.filter(Q(pk__in=own) | Q(project__isnull=True)).select_related("author", "project")
-    return rows.annotate(shared=Count("pk", filter=Q(project__isnull=True))).order_by("shared", "-version")
+    return rows.order_by(F("project").asc(nulls_last=True), "-version")
 
 
 @require_safe

@@ -125,8 +125,14 @@ def _lines(
             lines.append(Line(0, "gap-row", []))
         held = sheet.rows[number - 1] if number <= len(sheet.rows) else []
         cells = [Cell(cell_text(held[one - 1]) if one <= len(held) else "", mark(number, one)) for one in columns]
-        lines.append(Line(number, "head-row" if number < head_row + HEADER_ROWS else "", cells))
+        is_head = number < head_row + HEADER_ROWS and not any(_is_number(cell.text) for cell in cells)
+        lines.append(Line(number, "head-row" if is_head else "", cells))
     return lines
+
+
+def _is_number(text: str) -> bool:
+    """True for a reported number, with or without a qualifier."""
+    return re.fullmatch(r"[<>~]?\s*[+-]?(\d+([.,]\d*)*|[.,]\d+)", text) is not None
 
 
 def _mark(row: int, column: int, this: tuple[int, int]) -> str:

@@ -109,7 +109,7 @@ def _sets(at_hand: Well) -> list[dict[str, Any]]:
     latest = Decision.objects.filter(result=OuterRef("pk")).order_by("-pk").values("verdict")[:1]
     current = Result.objects.filter(current=True, analysis__current=True, analysis__sample__well=at_hand)
     counted = (
-        current.annotate(stands=Coalesce(Subquery(latest), Value(Verdict.UNDECIDED)))
+        current.annotate(stands=Coalesce(Subquery(latest), Value(Verdict.UNDECIDED.value)))
         .order_by()
         .values_list("analysis__review_item__review_set", "stands")
         .annotate(n=Count("pk"))

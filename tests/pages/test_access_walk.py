@@ -120,10 +120,7 @@ def test_nobody_is_asked_to_sign_in(made, client):
 
 
 def test_pages_outside_a_project(made, client):
-    asked = {
-        "home": [], "password_change": [], "tokens": [], "project_new": [], "login": [],
-    }  # fmt: skip
-    for name in asked:
+    for name in ("home", "password_change", "tokens", "project_new", "login"):
         expected = 200 if name == "login" else 302
         assert client.get(reverse(name)).status_code == expected, name
     for who, may_open in [(UserFactory(), False), (UserFactory(is_staff=True), True), (made.person("analyst"), False),
