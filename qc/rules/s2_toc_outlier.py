@@ -74,7 +74,7 @@ RULE = Rule(
     check=check,
     inputs=("S2", "TOC"),
     flags="S2",
-    formula="|z| > 3.5, z = 0.6745 (r - median r)/MAD, and the residual above 0.2 mg/g and 10 % of the line",
+    formula="|z| > 3.5, z = 0.6745 (r - median r)/MAD, and the residual above 0.2 mg/g and 15 % of the line",
     message="S2 is off the line of its unit",
     source="Iglewicz & Hoaglin limit as given on a secondary page; the smallest residual: our default, no publication",
     must_not_fire="With fewer than 10 samples.",

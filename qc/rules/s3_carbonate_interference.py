@@ -7,7 +7,7 @@ import pandas as pd
 from scipy import stats
 
 from qc.rules.facts import made_or_reported, positive, says
-from qc.rules.rule import WARN, Answer, Finding, Rule, fired, judge, say
+from qc.rules.rule import INFO, WARN, Answer, Finding, Rule, fired, judge, say
 from qc.rules.spans import Floats, exact, line, num, span, word
 from qc.rules.table import Table
 
@@ -87,7 +87,7 @@ def _finding(rows: pd.DataFrame, fact: pd.Series, row: int, limits: dict[str, fl
     return Finding(
         row,
         analyte,
-        WARN,
+        INFO if held == ["lean"] else WARN,  # lean alone: toc_floor_for_indices warns of it already
         text + ".",
         ("OI", "S3", "TOC", "CARB", "MINC", "TIC", "SIDERITE"),
         computed,
@@ -104,7 +104,7 @@ RULE = Rule(
     check=check,
     inputs=("S3", "OI", "TOC", "CARB", "MINC", "TIC", "SIDERITE"),
     flags="OI (S3 where OI is not reported)",
-    formula="TOC < 0.5, or OI > 150, or carbonate > 20 wt% and OI > 100, or siderite >= 2 wt%",
+    formula="TOC < 0.5, or OI > 150, or carbonate > 20 wt% and OI > 100, or siderite >= 2 wt%; for information where TOC is the only reason",
     message="OI may hold carbonate CO2",
     source="our default, no publication; basis from memory of Katz 1983, Org. Geochem. 4:195, and Peters 1986",
     must_not_fire="Outcrop, weathered rock and coal with a genuinely high OI; decarbonated splits.",

@@ -75,7 +75,7 @@ def suggestion(text: str, low: float, high: float, expected: float) -> str:
     swaps = [text[:i] + text[i + 1] + text[i] + text[i + 2 :] for i in range(len(text) - 1)]
     edits = [text[:i] + digit + text[i + 1 :] for i in range(len(text)) for digit in "0123456789"]
     for tries in (swaps, edits):
-        fitting = [one for one in tries if one != text and _number(one) is not None and low < float(one) < high]
+        fitting = [one for one in tries if one != text and _number(one) is not None and low <= float(one) <= high]
         if fitting:
             return min(fitting, key=lambda one: (abs(float(one) - expected), one))
     return ""

@@ -39,7 +39,7 @@ class Span:
     def over(self, other: "Span", scale: float = 1.0) -> "Span":
         """``scale * self / other`` for values that are not negative; NaN where the divisor may be zero or less."""
         divisor_lo = np.where(other.lo > 0, other.lo, np.nan)
-        with np.errstate(invalid="ignore", over="ignore"):
+        with np.errstate(invalid="ignore", over="ignore", divide="ignore"):
             lo = scale * np.maximum(self.lo, 0) / other.hi
             hi = scale * self.hi / divisor_lo
         return Span(np.where(np.isnan(hi), np.nan, lo), hi)

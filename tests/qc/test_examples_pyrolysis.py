@@ -196,6 +196,8 @@ def test_tmax_range_believes_peat_and_overmature_rock():
 def test_s3_carbonate_interference():
     finding = only("s3_carbonate_interference", {"S3": "0.90", "TOC": "0.42", "SIDERITE": "4"})
     assert finding.computed == pytest.approx(214, abs=0.5)
+    assert finding.severity == "warn"
+    assert only("s3_carbonate_interference", {"S3": "0.20", "TOC": "0.42"}).severity == "info"  # lean, and nothing else
     assert outcomes("s3_carbonate_interference", {"S3": "0.50", "TOC": "2.0"}) == {"pass"}
     assert outcomes("s3_carbonate_interference", {"S3": "2.40", "TOC": "2.0"}) == {
         "cannot_evaluate"
