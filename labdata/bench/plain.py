@@ -2,15 +2,22 @@
 
 import io
 import sqlite3
+import tempfile
 from collections.abc import Sequence
+from contextlib import closing
+from pathlib import Path
 
 import numpy as np
 import pandas as pd
 from python_calamine import CalamineWorkbook
 
-from labdata.bench.workload import HEADERS
+from labdata.bench.workload import HEADERS, LIMIT
 
 HEADER_ROW = 2
+INSERT = (
+    "INSERT INTO labdata_result (analysis_id, analyte_id, column_id, value, qualifier, value_reported, decimals, current)"
+    " VALUES (?, ?, ?, ?, ?, ?, 2, 1)"
+)
 NUMBERS = [name for name in HEADERS if name not in {"well", "sample", "kind", "formation"}]
 
 
@@ -91,15 +98,32 @@ def calamine(content: bytes) -> int:
     return len(book.get_sheet_by_index(0).to_python())
 
 
-def read_and_insert(content: bytes) -> int:
-    """Read every cell and put each measured value into one bare table: the floor under any intake."""
+def read_and_insert(content: bytes, schema: Sequence[str], folder: Path) -> int:
+    """Read every cell and put each measured value into a bare table of results: the floor under any intake.
+
+    ``schema`` are the statements that make the table of results with its constraints and indexes; it is made in a
+    database file of its own in ``folder``. Returns how many values went in.
+    """
     book = CalamineWorkbook.from_filelike(io.BytesIO(content))
     sheet = book.get_sheet_by_index(0).to_python()[HEADER_ROW + 1 :]
     first = list(HEADERS).index("toc")
-    values = [(n, c, str(cell)) for n, row in enumerate(sheet) for c, cell in enumerate(row[first:])]
-    with sqlite3.connect(":memory:") as database:
-        database.execute("CREATE TABLE result (id INTEGER PRIMARY KEY, line INTEGER, column INTEGER, value TEXT)")
-        database.executemany("INSERT INTO result (line, column, value) VALUES (?, ?, ?)", values)
+    values = [
+        (
+            line,
+            place,
+            place,
+            cell if isinstance(cell, float) else LIMIT,
+            "" if isinstance(cell, float) else "<",
+            str(cell),
+        )
+        for line, row in enumerate(sheet)
+        for place, cell in enumerate(row[first:])
+    ]
+    with tempfile.NamedTemporaryFile(dir=folder) as file, closing(sqlite3.connect(file.name)) as database:
+        for statement in schema:
+            database.execute(statement)
+        database.executemany(INSERT, values)
+        database.commit()
     return len(values)
 
 

@@ -4,9 +4,12 @@ import io
 import itertools
 from collections.abc import Callable
 from dataclasses import dataclass
+from pathlib import Path
 
 import pandas as pd
+from django.conf import settings
 from django.contrib.auth.models import User
+from django.db import connection
 
 from labdata.bench import plain, workload
 from labdata.bench.timing import Measured, together
@@ -32,10 +35,11 @@ class Sizes:
 def intake(sizes: Sizes) -> Measured:
     """One long workbook: received, read, matched and stored, against reading alone and a plain script."""
     content = workload.workbook(sizes.rows)
+    schema, folder = results_schema(), Path(settings.HOME)
     baselines = {
         "pandas + openpyxl script": lambda: plain.script(content),
         "calamine read alone": lambda: plain.calamine(content),
-        "calamine read + bare insert": lambda: plain.read_and_insert(content),
+        "calamine read + bare insert": lambda: plain.read_and_insert(content, schema, folder),
     }
     ours, others = together(lambda: bring_in(new_project(), [content]), baselines, sizes.runs)
     return Measured(
@@ -96,6 +100,14 @@ def pull(sizes: Sizes) -> Measured:
 
 
 SUITES: dict[str, Callable[[Sizes], Measured]] = {"intake": intake, "pile": pile, "qc": qc, "pull": pull}
+
+
+def results_schema() -> list[str]:
+    """The statements that made the table of results and its indexes."""
+    query = "SELECT sql FROM sqlite_master WHERE tbl_name = 'labdata_result' AND type IN ('table', 'index') AND sql NOT NULL"
+    with connection.cursor() as cursor:
+        cursor.execute(query + " ORDER BY type DESC")
+        return [row[0] for row in cursor.fetchall()]
 
 
 def new_project() -> Project:
