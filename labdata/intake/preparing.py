@@ -98,6 +98,8 @@ class _FileReader:
             prepared, mapping = _take_table(table, facts, self.findings)
             self.made.tables.append(prepared)
             self._name_wells(sheet, facts, mapping, prepared)
+        if layout.stray and layout.tables:
+            _report_stray(sheet, layout.stray, self.findings)
         if not layout.tables and layout.title:
             message = f"Sheet «{sheet.name}» holds no table of results and was not read."
             self.findings.note("no_table_in_sheet", message, sheet=sheet.name, remedy="Nothing to do if it holds none.")
@@ -158,6 +160,18 @@ class _FileReader:
         remedy = f"Name the well ({'' if several else '--well, or '}the answer «{id_}»)."
         answer = self.findings.ask(id_, "well_missing", message, options, free=True, sheet=sheet.name, remedy=remedy)
         return answer or ""
+
+
+def _report_stray(sheet: Sheet, rows: list[int], findings: Findings) -> None:
+    """Rows of numbers that belong to no table are named, so that none is lost unseen."""
+    lines = ", ".join(str(row + 1) for row in rows[:10]) + (" …" if len(rows) > 10 else "")
+    findings.warning(
+        "rows_outside_tables",
+        f"Rows {lines} hold numbers but belong to no table, and were not read.",
+        sheet=sheet.name,
+        cell=address(rows[0], 0),
+        remedy="If they are results, put a header above them.",
+    )
 
 
 def _no_table(name: str, layouts: list[tuple[Sheet, Layout]], findings: Findings) -> None:

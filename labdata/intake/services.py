@@ -26,9 +26,11 @@ def receive(
 ) -> Upload:  # fmt: skip
     """Keep a file's bytes and enqueue its reading. The same bytes again are answered at once, with nothing changed.
 
-    ``user`` None is the service itself. Raises NotAllowed, NotFound or InvalidInput.
+    The same ``idem_key`` again gives the first upload. ``user`` None is the service itself. Raises NotAllowed, NotFound or InvalidInput.
     """
     _may(user, project, create_wells)
+    if idem_key and (before := Upload.objects.filter(project=project, job__idem_key=idem_key).first()):
+        return before
     name = _file_name(name)
     sha256 = hashlib.sha256(content).hexdigest()
     stored_as = _keep(sha256, content)
@@ -114,6 +116,15 @@ def already_held(upload: Upload, report: Report) -> None:
     upload.report = report
     upload.answer = held_entry(upload.file_name, upload.source_file.sha256, report, upload.pk)
     upload.save(update_fields=["outcome", "report", "answer"])
+
+
+def settle_waiting(upload: Upload, report: Report) -> None:
+    """Other uploads of the same bytes that still wait for answers need none any more."""
+    same = Upload.objects.filter(source_file=upload.source_file_id, outcome=Upload.Outcome.WAITING).exclude(
+        pk=upload.pk
+    )
+    for other in same.select_related("source_file"):
+        already_held(other, report)
 
 
 def held_entry(name: str, sha256: str, report: Report | None, upload: int | None) -> dict[str, Any]:

@@ -69,27 +69,35 @@ class Table:
 
 @dataclass
 class Layout:
-    """What a sheet holds: its tables, and the lines outside them (title blocks and notes)."""
+    """What a sheet holds: its tables, the lines outside them (title blocks and notes), and rows of numbers outside."""
 
     tables: list[Table]
     title: list[list[str]]
+    stray: list[int] = field(default_factory=list)
 
 
 def find_tables(sheet: Sheet) -> Layout:
     """Every table of results in the sheet, in order."""
     _fill_merged(sheet)
-    tables: list[Table] = []
-    title: list[list[str]] = []
+    layout = Layout([], [])
     row = 0
-    while True:
-        header = _next_header(sheet, row)
-        if header is None:
-            title += [line for r in range(row, min(len(sheet.rows), row + 200)) if (line := _line(sheet, r))]
-            return Layout(tables, title)
-        title += [line for r in range(row, header.top) if (line := _line(sheet, r))]
+    while (header := _next_header(sheet, row)) is not None:
+        _outside(sheet, row, header.top, layout)
         row = _take_rows(sheet, header)
-        title += [[note] for note in header.notes]
-        tables += _side_by_side(header)
+        layout.title += [[note] for note in header.notes]
+        layout.tables += _side_by_side(header)
+    _outside(sheet, row, len(sheet.rows), layout)
+    return layout
+
+
+def _outside(sheet: Sheet, start: int, stop: int, layout: Layout) -> None:
+    """Keep the lines outside the tables, at most 200 of a stretch, and which of them hold several numbers."""
+    for row in range(start, stop):
+        line = _line(sheet, row)
+        if line and row - start < 200:
+            layout.title.append(line)
+        if sum(1 for cell in sheet.rows[row] if cell != "" and looks_numeric(cell)) >= 3:
+            layout.stray.append(row)
 
 
 def _side_by_side(table: Table) -> list[Table]:

@@ -227,6 +227,7 @@ class _Storing:
         upload.outcome, upload.report = prepared.outcome, report
         upload.answer = prepared.entry(self.counts, report.number, upload.pk)
         upload.save(update_fields=["outcome", "report", "answer"])
+        intake.settle_waiting(upload, report)
         audit.record(
             "report.imported", report, actor=upload.created_by, project=self.project,
             after={

@@ -178,6 +178,22 @@ def test_a_file_without_a_well_asks_for_it():
     assert entry(project, HEAD + "A,10,1,1\n", well="", answers={"well": "Quill 1"})["outcome"] == "imported"
 
 
+def test_a_file_that_waits_is_settled_when_the_same_bytes_come_in_with_answers():
+    project, text = ProjectFactory(), "Sample,Depth,TOC (wt%)\nA,10,1\n"
+    waiting = land(project, text, well="Quill 1").upload
+    land(project, text, well="Quill 1", answers={"unit:B": "m"})
+    waiting.refresh_from_db()
+    assert waiting.outcome == "already_held"
+
+
+def test_the_same_request_made_twice_is_one_upload():
+    project = ProjectFactory()
+    first, again = (
+        services.receive(project=project, name="r.csv", content=b"x", user=None, idem_key="once") for _ in range(2)
+    )
+    assert first == again
+
+
 def test_a_large_workbook_is_read_in_a_process_of_its_own(monkeypatch):
     monkeypatch.setattr("labdata.intake.workbook.APART_BYTES", 1)
     rows = [["Sample", "Depth (m)", "TOC (wt%)"], ["A", 10, 1.5]]

@@ -281,6 +281,14 @@ def test_a_header_repeated_on_every_page_and_an_n_beside_reflectance():
     assert (len(answer["tables"]), fields, answer["counts"]["rows"]) == (1, ["SAMPLE", "TOP", "RO", "RO_SD", "RO_N"], 2)
 
 
+@pytest.mark.django_db
+def test_rows_of_numbers_outside_every_table_are_named():
+    answer = entry(ProjectFactory(), "1,2,3\nSample,Depth (m),TOC (wt%)\nA,10,1\n")
+    assert [f["message"] for f in findings_of(answer, "warning")] == [
+        "Rows 1 hold numbers but belong to no table, and were not read."
+    ]
+
+
 @pytest.mark.parametrize(("name", "parts"), [
     ("KG-17.xlsx", ("KG-17", None, False)),
     ("KG-17_rev2.xlsx", ("KG-17", 2, False)),
