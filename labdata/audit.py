@@ -88,7 +88,8 @@ def verify() -> dict[str, Any]:
     """Walk the whole chain. Returns {entries, head, verified_at}; raises AuditBroken naming the first bad entry."""
     expected_seq, expected_prev = 1, GENESIS
     for entry in _entries():
-        where = {"seq": entry.seq, "action": entry.action, "object": f"{entry.object_type} {entry.object_id}"}
+        about = f"{entry.object_type} {entry.object_id}"
+        where: dict[str, Any] = {"seq": entry.seq, "action": entry.action, "object": about}
         if entry.seq != expected_seq:
             raise AuditBroken(f"Entry {expected_seq} of the audit trail is missing; {entry.seq} follows.", **where)
         if entry.prev_hash != expected_prev:

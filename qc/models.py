@@ -53,7 +53,9 @@ class QcRun(models.Model):
     analyses_checked = models.PositiveIntegerField(default=0)
     results_checked = models.PositiveIntegerField(default=0)
     summary = models.JSONField(default=list)
-    wells = models.ManyToManyField(Well, through="QcRunWell", related_name="qc_runs")
+    wells: "models.ManyToManyField[Well, QcRunWell]" = models.ManyToManyField(
+        Well, through="QcRunWell", related_name="qc_runs"
+    )
 
     class Meta:
         ordering = ["-id"]
@@ -85,7 +87,7 @@ class Severity(Choices):
 
 
 class FlagQuerySet(models.QuerySet["Flag"]):
-    def latest(self) -> "FlagQuerySet":
+    def in_force(self) -> "FlagQuerySet":
         """Flags of the latest run of each well."""
         newest = QcRunWell.objects.filter(well=models.OuterRef("well")).order_by("-run").values("run")[:1]
         return self.filter(run=models.Subquery(newest))
@@ -145,7 +147,9 @@ class ReviewSet(models.Model):
     state = models.CharField(max_length=6, choices=ReviewSetState.choices, default=ReviewSetState.OPEN)
     version = models.PositiveIntegerField(default=1, help_text="rises with every decision, for optimistic locking")
     created_at = models.DateTimeField(default=timezone.now, editable=False)
-    analyses = models.ManyToManyField(Analysis, through="ReviewItem", related_name="review_sets")
+    analyses: "models.ManyToManyField[Analysis, ReviewItem]" = models.ManyToManyField(
+        Analysis, through="ReviewItem", related_name="review_sets"
+    )
 
     class Meta:
         ordering = ["project", "well", "number"]
