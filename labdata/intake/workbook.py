@@ -10,7 +10,7 @@ from typing import Any
 
 from python_calamine import CalamineError, CalamineWorkbook, SheetVisibleEnum
 
-from labdata.intake import apart, sheetxml, textfile
+from labdata.intake import apart, sheetxml, textfile, xlsfaults
 from labdata.intake.errors import UnreadableFile
 from labdata.intake.values import number_text
 
@@ -104,7 +104,9 @@ def read_here(name: str, content: bytes) -> Workbook:
     if content.startswith(b"PK"):
         return _zipped(name, content)
     if content.startswith(_OLE):
-        return _calamine(name, content, "xls")
+        book = _calamine(name, content, "xls")
+        xlsfaults.add_faults(content, book.sheets)
+        return book
     if content.lstrip()[:5].lower() in {b"<?xml", b"<html", b"<!doc", b"<tabl"}:
         raise UnreadableFile(
             f"«{name}» is a web page or XML, whatever its name says.", remedy="Save it as .xlsx or .csv.", file=name

@@ -189,6 +189,29 @@ def test_error_cells_and_unstored_formulas_of_a_workbook_are_named():
 
 
 @pytest.mark.django_db
+@pytest.mark.parametrize("rows", [2, 400])  # a small workbook lies in short sectors, a large one in whole ones
+def test_error_cells_of_an_old_workbook_are_named(rows):
+    book = xlwt.Workbook()
+    sheet = book.add_sheet("Überblick")
+    for column, text in enumerate(["Sample", "Depth (m)", "TOC (wt%)", "HI"]):
+        sheet.write(0, column, text)
+    for row in range(1, rows + 1):
+        for column, value in enumerate([f"S{row}", 10.5 + row, 1.25, 300]):
+            sheet.write(row, column, value)
+    sheet.row(rows + 1).write(0, "last")
+    sheet.row(rows + 1).write(1, 5000)
+    sheet.row(rows + 1).set_cell_error(2, 0x2A)
+    sheet.row(rows + 1).set_cell_error(3, "#DIV/0!")
+    stream = io.BytesIO()
+    book.save(stream)
+    answer = entry(ProjectFactory(), stream.getvalue(), "x.xls")
+    assert [(f["cell"], f["value"]) for f in answer["findings"]] == [
+        (f"C{rows + 2}", "#N/A"),
+        (f"D{rows + 2}", "#DIV/0!"),
+    ]
+
+
+@pytest.mark.django_db
 def test_tables_below_and_beside_each_other():
     def fill(book):
         sheet = book.active
