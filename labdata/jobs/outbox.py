@@ -5,6 +5,7 @@ from functools import partial
 from typing import Any
 from uuid import UUID
 
+from django.conf import settings
 from django.contrib.auth.models import User
 from django.db import IntegrityError, transaction
 from django.db.models import Q
@@ -17,7 +18,7 @@ from labdata.jobs.tasks import run_job
 from labdata.models import Job, JobState, Project
 
 logger = logging.getLogger(__name__)
-FIRST_LOOK_SECONDS = 30
+FIRST_LOOK_SECONDS = 30.0
 LIVE = (JobState.QUEUED, JobState.RUNNING)
 
 
@@ -43,7 +44,7 @@ def enqueue(
             with transaction.atomic():
                 job = Job.objects.create(
                     kind=kind, params=params, project=project, created_by=user, max_attempts=attempts,
-                    idem_key=idem_key or None, dedupe_key=dedupe_key, next_dispatch_at=after(FIRST_LOOK_SECONDS),
+                    idem_key=idem_key or None, dedupe_key=dedupe_key, next_dispatch_at=after(first_look_seconds()),
                 )  # fmt: skip
         except IntegrityError:
             if existing := _existing(kind, project, idem_key, dedupe_key):
@@ -53,6 +54,11 @@ def enqueue(
         transaction.on_commit(partial(publish, job.pk), robust=True)
         job.refresh_from_db()
     return job
+
+
+def first_look_seconds() -> float:
+    """How long a message may be under way before the sweeper publishes another; the setting JOB_REPUBLISH_SECONDS."""
+    return float(getattr(settings, "JOB_REPUBLISH_SECONDS", FIRST_LOOK_SECONDS))
 
 
 def _existing(kind: str, project: Project | None, idem_key: str | None, dedupe_key: str) -> Job | None:

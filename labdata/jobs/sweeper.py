@@ -16,7 +16,7 @@ from django.db.models.functions import Now
 
 from labdata.jobs.clock import after
 from labdata.jobs.lease import NO_LEASE, note_event, worker_name
-from labdata.jobs.outbox import FIRST_LOOK_SECONDS, publish
+from labdata.jobs.outbox import first_look_seconds, publish
 from labdata.models import Job, JobState, SweeperBeat
 
 logger = logging.getLogger(__name__)
@@ -89,7 +89,7 @@ def _tried(job: Job, why: str) -> str:
 
 def republish(job: Job) -> bool:
     """Publish a queued job and look again later, each time twice as late. Returns whether this call did."""
-    wait = min(FIRST_LOOK_SECONDS * 2 ** min(job.dispatch_count, 10), LONGEST_WAIT_SECONDS)
+    wait = min(first_look_seconds() * 2 ** min(job.dispatch_count, 10), LONGEST_WAIT_SECONDS)
     mine = Job.objects.filter(pk=job.pk, state=JobState.QUEUED, dispatch_count=job.dispatch_count).update(
         dispatch_count=F("dispatch_count") + 1, next_dispatch_at=after(wait)
     )

@@ -3,3 +3,4 @@
 from labdata.settings import *  # noqa: F403
 
 JOB_KINDS_EXTRA = "tests.jobs.probes.KINDS"
+JOB_REPUBLISH_SECONDS = 4.0

@@ -11,7 +11,7 @@ from tests.jobs.conftest import prepare
 from tests.jobs.fleet import Fleet, kill_at_random
 from tests.setup import servers
 
-JOBS, SECONDS = 40, 0.25
+JOBS, SECONDS = 32, 0.25
 QUEUE_BAD_JOBS = """
 from labdata.jobs import enqueue
 for kind, params in (("die", {}), ("hang", {"seconds": 60, "hangs": 9}), ("probe", {})):
@@ -39,7 +39,7 @@ def kill_workers_while_jobs_run(fleet, *, seed):
     enqueuer = fleet.python("-m", "tests.jobs.enqueuer", str(count), str(SECONDS))
     workers = [fleet.worker(), fleet.worker()]
     until_begun(fleet)
-    kill_at_random(fleet, workers, fleet.worker, seed=seed, kills=5, first=0.3, between=(0.7, 1.8))
+    kill_at_random(fleet, workers, fleet.worker, seed=seed, kills=4, first=0.3, between=(0.7, 1.8))
     assert enqueuer.wait(60) == 0, fleet.log()
     fleet.settle(90, count)
     assert killed_while_working(fleet) > 0, "no kill met a running job; the test proved nothing"

@@ -18,7 +18,7 @@ def published(monkeypatch):
     return ids
 
 
-def dead_worker(kind="probe", **fields):
+def dead_worker(kind="call", **fields):
     """A running job whose worker no longer answers."""
     job = enqueue(kind, {}, project=None, user=None)
     claim(job.pk)
