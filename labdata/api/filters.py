@@ -281,7 +281,7 @@ class FlagRows(RowsOfSamples):
 
     def filter_queryset(self, queryset: QuerySet[Any]) -> QuerySet[Any]:
         rows = super().filter_queryset(queryset)
-        return rows if self.form.cleaned_data.get("run") is not None else rows.latest()  # type: ignore[attr-defined]
+        return rows if self.form.cleaned_data.get("run") is not None else rows.in_force()
 
 
 class UploadRows(Rows):

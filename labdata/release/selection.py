@@ -53,21 +53,17 @@ class Selection:
 
 
 def signatures_in_force(project: Project) -> dict[int, Signature]:
-    """Review set -> its valid signature, of all signed sets of the project."""
-    rows = (
-        SignOff.objects.filter(
-            review_set__project=project, review_set__state=ReviewSetState.SIGNED, reopening__isnull=True
-        )
-        .order_by("pk")
-        .values_list("review_set_id", "pk", "signed_by__username", "signed_at")
-    )
-    last = dict(
-        Decision.objects.filter(review_set__project=project)
-        .values("review_set")
-        .annotate(last=Max("pk"))
-        .values_list("review_set", "last")
-    )
-    return {held: Signature(pk, who, when, last.get(held, 0)) for held, pk, who, when in rows}
+    """Review set -> its valid signature with the last decision before it, of all signed sets of the project."""
+    last = Decision.objects.filter(review_set__project=project).values("review_set").annotate(last=Max("pk"))
+    return _signatures(project, dict(last.values_list("review_set", "last")))
+
+
+def _signatures(project: Project, last: Mapping[int, int]) -> dict[int, Signature]:
+    rows = SignOff.objects.filter(
+        review_set__project=project, review_set__state=ReviewSetState.SIGNED, reopening__isnull=True
+    ).order_by("pk")
+    facts = rows.values_list("review_set_id", "pk", "signed_by__username", "signed_at")
+    return {held: Signature(pk, who, when, last.get(held, 0)) for held, pk, who, when in facts}
 
 
 def latest_runs(project: Project) -> dict[int, int]:
@@ -95,7 +91,7 @@ def working_data(project: Project, results: QuerySet[Result] | None = None) -> S
         project=project,
         results=chosen,
         wells=well_facts(project),
-        signatures=signatures_in_force(project),
+        signatures=_signatures(project, {}),  # the latest decision stands, whichever it is
         qc_runs=latest_runs(project),
         people=dict(User.objects.values_list("pk", "username")),
     )

@@ -81,6 +81,7 @@ def signed_data(project: Project) -> Selection:
     deciders = set(Decision.objects.filter(review_set__in=signatures).order_by().values_list("decided_by", flat=True))
     return replace(
         today,
+        signatures=signatures,
         signed_only=True,
         wells={pk: facts for pk, facts in today.wells.items() if pk in wells},
         qc_runs={well: run for well, run in today.qc_runs.items() if well in wells},
