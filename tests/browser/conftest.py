@@ -10,23 +10,19 @@ from collections.abc import Callable, Iterator
 import pytest
 from playwright.sync_api import Browser, Page, sync_playwright
 
+from tests.browser.chromium import CHROMIUM, FLAGS, WIDE
 from tests.factories import PASSWORD
 
-CHROMIUM = os.environ.get("KEROGATE_CHROMIUM", "/usr/bin/chromium")
-FLAGS = [
-    "--headless", "--no-sandbox", "--disable-gpu", "--disable-quic", "--no-first-run", "--disable-background-networking",
-    "--disable-component-update", "--disable-sync",
-]  # fmt: skip
 LISTEN = """
 document.addEventListener('securitypolicyviolation', (event) => {
   console.error('policy violation: ' + event.violatedDirective + ' ' + event.blockedURI + ' ' + event.sample);
 });
 """
-WIDE = {"width": 1440, "height": 900}
 
 
-@pytest.fixture(scope="session")
+@pytest.fixture(scope="package")
 def browser() -> Iterator[Browser]:
+    """One Chromium for this folder; its driver holds an event loop in the main thread, which ends with it."""
     os.environ["DJANGO_ALLOW_ASYNC_UNSAFE"] = "true"
     with sync_playwright() as playwright:
         browser = playwright.chromium.launch(executable_path=CHROMIUM, args=FLAGS)
