@@ -10,7 +10,7 @@ from typing import Any
 
 from python_calamine import CalamineError, CalamineWorkbook, SheetVisibleEnum
 
-from labdata.intake import apart, sheetxml, textfile, xlsfaults
+from labdata.intake import apart, odsfaults, sheetxml, textfile, xlsfaults
 from labdata.intake.errors import UnreadableFile
 from labdata.intake.values import number_text
 
@@ -169,6 +169,8 @@ def _zipped(name: str, content: bytes) -> Workbook:
                 file=name,
             )
         book = _calamine(name, content, "ods" if "content.xml" in names else "xlsx")
+        if book.kind == "ods":
+            odsfaults.add_faults(archive, book.sheets)
         if "xl/workbook.xml" in names:
             sheetxml.add_formats(archive, book.sheets)
     return book

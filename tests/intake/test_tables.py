@@ -100,13 +100,15 @@ def as_xlsx(rows):
 
 def as_ods(rows):
     def cell(value):
+        if str(value).startswith("#"):
+            return f'<table:table-cell office:value-type="string" office:string-value="" calcext:value-type="error"><text:p>{value}</text:p></table:table-cell>'
         if isinstance(value, str):
             return f'<table:table-cell office:value-type="string"><text:p>{value.replace("<", "&lt;")}</text:p></table:table-cell>'
         return f'<table:table-cell office:value-type="float" office:value="{value}"><text:p>{value}</text:p></table:table-cell>'
 
-    spaces = " ".join(
-        f'xmlns:{name}="urn:oasis:names:tc:opendocument:xmlns:{name}:1.0"' for name in ("office", "table", "text")
-    )
+    names = "urn:oasis:names:tc:opendocument:xmlns"
+    spaces = " ".join(f'xmlns:{name}="{names}:{name}:1.0"' for name in ("office", "table", "text"))
+    spaces += ' xmlns:calcext="urn:org:documentfoundation:names:experimental:calc:xmlns:calcext:1.0"'
     body = "".join(f"<table:table-row>{''.join(map(cell, row))}</table:table-row>" for row in rows)
     content = f'<?xml version="1.0"?><office:document-content {spaces}><office:body><office:spreadsheet><table:table table:name="Data">{body}</table:table></office:spreadsheet></office:body></office:document-content>'
     stream = io.BytesIO()
@@ -209,6 +211,14 @@ def test_error_cells_of_an_old_workbook_are_named(rows):
         (f"C{rows + 2}", "#N/A"),
         (f"D{rows + 2}", "#DIV/0!"),
     ]
+
+
+@pytest.mark.django_db
+def test_error_cells_of_an_open_document_are_named():
+    answer = entry(
+        ProjectFactory(), as_ods([["Sample", "Depth (m)", "TOC (wt%)"], ["A", 10, 1], ["B", 11, "#REF!"]]), "x.ods"
+    )
+    assert [(f["cell"], f["value"]) for f in findings_of(answer, "error")] == [("C3", "#REF!")]
 
 
 @pytest.mark.django_db

@@ -1,0 +1,36 @@
+"""Error cells of an OpenDocument spreadsheet, which a fast reader gives as empty."""
+
+import zipfile
+from typing import TYPE_CHECKING
+from xml.etree import ElementTree
+
+if TYPE_CHECKING:
+    from labdata.intake.workbook import Sheet
+
+_TABLE = "{urn:oasis:names:tc:opendocument:xmlns:table:1.0}"
+_TEXT = "{urn:oasis:names:tc:opendocument:xmlns:text:1.0}"
+_CALC = "{urn:org:documentfoundation:names:experimental:calc:xmlns:calcext:1.0}"
+
+
+def add_faults(archive: zipfile.ZipFile, sheets: "list[Sheet]") -> None:
+    """Fill ``faults`` of the sheets from the document's XML."""
+    xml = archive.read("content.xml")
+    if b'value-type="error"' not in xml:
+        return
+    by_name = {sheet.name: sheet for sheet in sheets}
+    for table in ElementTree.fromstring(xml).iter(f"{_TABLE}table"):
+        sheet = by_name.get(table.get(f"{_TABLE}name", ""))
+        if sheet is not None:
+            _table_faults(table, sheet)
+
+
+def _table_faults(table: ElementTree.Element, sheet: "Sheet") -> None:
+    row = 0
+    for line in table.iter(f"{_TABLE}table-row"):
+        column = 0
+        for cell in line:
+            if cell.get(f"{_CALC}value-type") == "error":
+                paragraph = cell.find(f"{_TEXT}p")
+                sheet.faults[row, column] = (paragraph.text if paragraph is not None else "") or "#error"
+            column += int(cell.get(f"{_TABLE}number-columns-repeated", "1"))
+        row += int(line.get(f"{_TABLE}number-rows-repeated", "1"))
