@@ -67,7 +67,7 @@ def flag_answers(review_set: ReviewSet) -> dict[tuple[str, str], FlagAnswer]:
 def flags_of(review_set: ReviewSet) -> QuerySet[Flag]:
     """Flags of the latest run that speak of the set: of its analyses, or of its well as a whole."""
     own = Q(analysis__review_item__review_set=review_set, analysis__current=True)
-    of_well = Flag.objects.latest().filter(well=review_set.well_id)
+    of_well = Flag.objects.in_force().filter(well=review_set.well_id)
     return of_well.filter(own | Q(analysis__isnull=True)).order_by("pk")
 
 

@@ -86,7 +86,7 @@ def _verdicts(project: Project) -> dict[int, dict[str, int]]:
 
 def _flags(project: Project) -> dict[int, dict[str, int]]:
     """Flags of the latest runs per set and severity."""
-    latest = Flag.objects.latest().filter(well__project=project).order_by()
+    latest = Flag.objects.in_force().filter(well__project=project).order_by()
     own = latest.filter(analysis__current=True).values_list("analysis__review_item__review_set", "severity")
     of_unit = latest.filter(analysis=None).values_list("well__review_sets", "severity")
     counts: dict[int, dict[str, int]] = defaultdict(lambda: defaultdict(int))

@@ -3,7 +3,7 @@
 import { Grid, Points } from "/static/js/plots/grid.js";
 import { caught, inside, rectangle } from "/static/js/plots/lasso.js";
 import { ARROWS, Marks, lookOf } from "/static/js/plots/marks.js";
-import { Scale, domainOf, extent, roundStep, tickText } from "/static/js/plots/scale.js";
+import { Scale, domainOf, extent, held, roundStep, tickText } from "/static/js/plots/scale.js";
 import { Selection } from "/static/js/plots/selection.js";
 import { ResultTable } from "/static/js/plots/table.js";
 import { Model } from "/static/js/review/model.js";
@@ -39,6 +39,8 @@ check("an extent above nought for a logarithmic axis", () => same(extent([0, 0.0
 check("a domain starts at nought where asked and no value is below", () => same(domainOf(2, 10, { zero: true })[0], 0));
 check("a domain of one value has room", () => { const [low, high] = domainOf(5, 5); if (!(low < 5 && high > 5)) throw new Error(`${low} ${high}`); });
 check("a domain of nothing is drawn all the same", () => same(domainOf(Infinity, -Infinity), [0, 1]));
+
+check("a value beyond its axis stands at the edge and says which way it lies", () => same([held([0, 10], -2), held([0, 10], 4), held([0, 10], 99)], [[-1, 0], [0, 4], [1, 10]]));
 
 check("inside a path by even-odd", () => {
   const square = rectangle(0, 0, 10, 10);
@@ -120,6 +122,11 @@ const DATA = {
 };
 check("a value keeps its qualifier and decimals", () => { const model = new Model(DATA); same([model.shown(model.columns[0], 0), model.shown(model.columns[0], 1), model.shown(model.columns[1], 1)], ["1.50", "<0.05", ""]); });
 check("a verdict outranks a flag, a flag of weight an open value", () => { const model = new Model(DATA); same([0, 1, 2].map((row) => model.stateName(model.columns[0], row)), ["accepted", "flagged", "rejected"]); });
+check("a rejected value does not stretch its axis", () => {
+  const model = new Model({ ...DATA, columns: [column("HI", [200, 400, 5000], { verdict: [1, 1, 2] })] });
+  const [, high] = model.columns[0].domain;
+  same([high < 500, model.columns[0].above, model.columns[0].below], [true, true, false]);
+});
 check("results of rows and columns leave out what was not measured", () => same(new Model(DATA).results([0, 1], ["TOC", "TMAX"]), [100, 101, 100]));
 
 function table(selection) {

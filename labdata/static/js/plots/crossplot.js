@@ -4,10 +4,10 @@ import { FONT, FONT_STRONG, INK, SOFT, drawX, drawY, fitText, frame } from "./ax
 import { Grid, Points } from "./grid.js";
 import { caught } from "./lasso.js";
 import { ARROWS, lookOf } from "./marks.js";
-import { Scale } from "./scale.js";
+import { Scale, held } from "./scale.js";
 import { modeOf } from "./selection.js";
 
-const LEFT = 40, BOTTOM = 32, TOP = 20, RIGHT = 8, ARROW_ROOM = 8;
+const LEFT = 40, BOTTOM = 32, TOP = 20, RIGHT = 8, ARROW_ROOM = 11;
 
 export class CrossPlot {
   constructor(surface, model, selection, marks, tell) {
@@ -54,7 +54,8 @@ export class CrossPlot {
     if (!this.x || !this.y) { this.points = new Points(1); this.grid = new Grid(this.points); return; }
     const { width, height } = this.surface;
     const box = this.box = { left: LEFT, right: width - RIGHT, top: TOP, bottom: height - BOTTOM };
-    const across = [box.left + (this.x.below ? ARROW_ROOM : 0), box.right], up = [box.bottom - (this.y.below ? ARROW_ROOM : 0), box.top];
+    const across = [box.left + (this.x.below ? ARROW_ROOM : 0), box.right - (this.x.above ? ARROW_ROOM : 0)];
+    const up = [box.bottom - (this.y.below ? ARROW_ROOM : 0), box.top + (this.y.above ? ARROW_ROOM : 0)];
     this.scaleX = new Scale(this.viewX, this.plot.invert_x ? across.reverse() : across, this.x.log);
     this.scaleY = new Scale(this.viewY, this.plot.invert_y ? up.reverse() : up, this.y.log);
     pen.fillStyle = "#fff"; pen.fillRect(box.left, box.top, box.right - box.left, box.bottom - box.top);
@@ -90,20 +91,21 @@ export class CrossPlot {
   #place() {
     const { x, y } = this, points = new Points(), [left, right] = ordered(this.viewX), [low, high] = ordered(this.viewY);
     for (let row = 0; row < x.value.length; row += 1) {
-      const u = x.value[row], v = y.value[row];
+      const [across, u] = held(x.domain, x.value[row]), [along, v] = held(y.domain, y.value[row]);
       if (u >= left && u <= right && v >= low && v <= high) {
-        points.push(this.scaleX.to(u), this.scaleY.to(v), row, 0, lookOf(Math.max(x.state[row], y.state[row]), this.#arrow(row)));
+        points.push(this.scaleX.to(u), this.scaleY.to(v), row, 0, lookOf(Math.max(x.state[row], y.state[row]), this.#arrow(row, across, along)));
       }
     }
     this.points = points;
     this.grid = new Grid(points);
   }
 
-  /** Where the truth lies of a point with a qualifier: along y first, turned round with the axis. */
-  #arrow(row) {
-    const along = this.y.arrow[row], across = this.x.arrow[row];
-    if (along) return (along === ARROWS.left) !== this.plot.invert_y ? ARROWS.down : ARROWS.up;
-    if (across) return (across === ARROWS.left) !== this.plot.invert_x ? ARROWS.left : ARROWS.right;
+  /** Which way the value lies of a point with a qualifier, or beyond an axis: along y first, turned round with the axis. */
+  #arrow(row, beyondX, beyondY) {
+    const way = (beyond, arrow) => beyond || (arrow === ARROWS.left ? -1 : arrow === ARROWS.right ? 1 : 0);
+    const along = way(beyondY, this.y.arrow[row]), across = way(beyondX, this.x.arrow[row]);
+    if (along) return (along < 0) !== Boolean(this.plot.invert_y) ? ARROWS.down : ARROWS.up;
+    if (across) return (across < 0) !== Boolean(this.plot.invert_x) ? ARROWS.left : ARROWS.right;
     return ARROWS.none;
   }
 

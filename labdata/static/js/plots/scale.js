@@ -66,6 +66,11 @@ function decades(low, high) {
   return found;
 }
 
+/** Which way a rejected value lies beyond the ends of an axis: -1, 0 or 1, and the value where it is drawn. */
+export function held([low, high], value) {
+  return value < low ? [-1, low] : value > high ? [1, high] : [0, value];
+}
+
 /** A tick as it is written: no trailing noise, thousands left whole. */
 export function tickText(value) {
   const size = Math.abs(value);

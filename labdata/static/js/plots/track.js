@@ -3,11 +3,11 @@
 import { FONT, FONT_STRONG, INK, LINE, SOFT, drawX, fitText, frame } from "./axis.js";
 import { Grid, Points } from "./grid.js";
 import { caught } from "./lasso.js";
-import { lookOf } from "./marks.js";
-import { Scale, domainOf, extent, tickText } from "./scale.js";
+import { ARROWS, lookOf } from "./marks.js";
+import { Scale, domainOf, extent, held, tickText } from "./scale.js";
 import { modeOf } from "./selection.js";
 
-const HEAD = 46, FOOT = 6, DEPTHS = 38, UNITS = 62, GAP = 5, ARROW_ROOM = 12;
+const HEAD = 46, FOOT = 6, DEPTHS = 38, UNITS = 72, GAP = 5, ARROW_ROOM = 12;
 
 export class TrackStrip {
   /** `model`: rows, depth (top, middle, base), bands; `columns`: the tracks to draw. */
@@ -164,11 +164,14 @@ export class TrackStrip {
   }
 
   #place({ column, scale }, n) {
-    const { middle } = this.model, [low, high] = this.view;
+    const { middle } = this.model, [low, high] = this.view, zoomed = this.domains.has(column.key);
     for (let row = 0; row < middle.length; row += 1) {
-      const value = column.value[row], depth = middle[row];
-      if (value >= scale.domain[0] && value <= scale.domain[1] && depth >= low && depth <= high) {
-        this.points.push(scale.to(value), this.depth.to(depth), row, n, lookOf(column.state[row], column.arrow[row]));
+      const depth = middle[row];
+      if (!(depth >= low && depth <= high)) continue;
+      const [beyond, value] = held(scale.domain, column.value[row]);
+      if (value === value && !(beyond && zoomed)) {
+        const arrow = beyond ? (beyond < 0 ? ARROWS.left : ARROWS.right) : column.arrow[row];
+        this.points.push(scale.to(value), this.depth.to(depth), row, n, lookOf(column.state[row], arrow));
       }
     }
   }

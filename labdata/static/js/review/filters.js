@@ -6,7 +6,7 @@ export class Filters {
   constructor(form, model, table, selection) {
     Object.assign(this, { form, table });
     const { column, low, high, only } = form.elements;
-    column.replaceChildren(make("option", { value: "depth" }, "Depth [m]"), ...model.columns.map((one) => make("option", { value: one.key }, `${one.label} [${one.unit}]`)));
+    column.replaceChildren(make("option", { value: "depth" }, "Depth"), ...model.columns.map((one) => make("option", { value: one.key }, `${one.label} [${one.unit}]`)));
     form.addEventListener("submit", (event) => {
       event.preventDefault();
       if (low.value === "" && high.value === "") return;

@@ -17,15 +17,15 @@ export class FlagPanel {
     this.model = model;
     const groups = new Map();
     for (const flag of model.data.flags) groups.set(flag.rule, [...(groups.get(flag.rule) ?? []), flag]);
-    const rank = (flags) => [flags.every((flag) => flag.answer), Math.min(...flags.map((flag) => WEIGHT[flag.severity])), -flags.length];
+    const rank = (flags) => [weighty(flags).length ? 0 : 1, Math.min(...flags.map((flag) => WEIGHT[flag.severity])), -flags.length];
     const ordered = [...groups].sort(([, a], [, b]) => compare(rank(a), rank(b)));
     this.box.replaceChildren(...(ordered.length ? ordered.map(([rule, flags]) => this.#group(rule, flags)) : [none()]));
   }
 
   #group(rule, flags) {
-    const left = flags.filter((flag) => !flag.answer), worst = flags.reduce((a, b) => (WEIGHT[a.severity] <= WEIGHT[b.severity] ? a : b)).severity;
+    const worst = flags.reduce((a, b) => (WEIGHT[a.severity] <= WEIGHT[b.severity] ? a : b)).severity;
     const group = make("details", { class: "rule", "data-rule": rule },
-      make("summary", {}, make("span", { class: `state state-${worst}` }, this.#title(rule)), make("span", { class: "count" }, left.length ? `${left.length} open${left.length < flags.length ? ` of ${flags.length}` : ""}` : `${flags.length} answered`)));
+      make("summary", {}, make("span", { class: `state state-${worst}` }, this.#title(rule)), make("span", { class: "count" }, counted(flags))));
     group.open = this.open.has(rule);
     group.addEventListener("toggle", () => { if (group.open) { this.open.add(rule); this.#fill(group, flags); } else this.open.delete(rule); });
     if (group.open) this.#fill(group, flags);
@@ -108,6 +108,15 @@ export class FlagPanel {
       more.append(evidence(told.evidence), make("p", { class: "small muted" }, `Source: ${told.source}`));
     } catch (refusal) { more.append(make("p", { class: "state state-error" }, refusal.message)); }
   }
+}
+
+/** Flags of weight that nobody has answered yet. */
+function weighty(flags) { return flags.filter((flag) => !flag.answer && flag.severity !== "info"); }
+
+function counted(flags) {
+  const open = weighty(flags).length, all = flags.length;
+  if (open) return open < all ? `${open} of ${all} open` : `${open} open`;
+  return flags.every((flag) => flag.answer) ? `${all} answered` : `${all} for information`;
 }
 
 function span(interval) { return interval ? `${interval[0]}–${interval[1]} m` : "whole well"; }

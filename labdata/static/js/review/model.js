@@ -25,8 +25,11 @@ export class Model {
       state[row] = sent.computed ? rank.computed
         : verdict === undecided && sent.flag[row] >= weighty ? rank.flagged : rank[this.data.verdicts[verdict]];
     }
-    const domain = domainOf(...extent(value, sent.log ? 0 : undefined), sent);
-    return { ...sent, value, arrow, state, domain, below: arrow.includes(ARROW["<"]), above: arrow.includes(ARROW[">"]) };
+    const kept = value.filter((_, row) => state[row] !== rank.rejected), floor = sent.log ? 0 : undefined;
+    let [low, high] = extent(kept, floor); // an axis fits what is kept; a rejected value beyond it stands at the edge
+    if (low > high) [low, high] = extent(value, floor);
+    const domain = domainOf(low, high, sent);
+    return { ...sent, value, arrow, state, domain, below: arrow.includes(ARROW["<"]) || value.some((one) => one < domain[0]), above: arrow.includes(ARROW[">"]) || value.some((one) => one > domain[1]) };
   }
 
   /** The column of an analyte: the first where two methods gave it. */
