@@ -16,13 +16,17 @@ def add_role(*, by: User, project: Project, username: str, role: str) -> Members
     """Give an account a role. Raises NotAllowed, NotFound (account), InvalidInput (role), Conflict (held already)."""
     require(by, project, Action.ADMINISTER)
     _check_role(role)
-    user = find_user(username.strip())
+    return grant(actor=by, project=project, user=find_user(username.strip()), role=role)
+
+
+def grant(*, actor: User | None, project: Project, user: User, role: str) -> Membership:
+    """The change itself; ``actor`` None is the machine's owner at the command line. Raises Conflict (held already)."""
     with transaction.atomic():
         membership, made = Membership.objects.get_or_create(project=project, user=user, role=role)
         if not made:
             raise Conflict(f"{user} is {Role(role).label} of this project already.", field="role")
         after = {"user": user.username, "role": role}
-        audit.record("member.role_added", membership, actor=by, project=project, after=after)
+        audit.record("member.role_added", membership, actor=actor, project=project, after=after)
     return membership
 
 

@@ -1,6 +1,7 @@
 """Opening a project."""
 
 from django.contrib.auth.models import User
+from django.core.exceptions import ValidationError
 from django.db import transaction
 from django.utils.text import slugify
 
@@ -8,6 +9,8 @@ from labdata import audit
 from labdata.access import GRANTS, Action, AnyUser
 from labdata.errors import Conflict, InvalidInput, NotAllowed
 from labdata.models import Membership, Project, Role
+
+DEMONSTRATION = "demo"
 
 
 def may_open_project(user: AnyUser) -> bool:
@@ -43,4 +46,36 @@ def open_project(*, user: User, name: str, slug: str = "", description: str = ""
             project=project,
             after={"slug": slug, "name": project.name, "administrator": user.username},
         )
+    return project
+
+
+def open_from_command_line(slug: str) -> Project:
+    """A project made by the machine's owner: the installation's administrators administer it.
+
+    In a home that holds the demonstration, its members belong to the new project as well, in the same roles, so
+    that a visitor can take files of their own through every step. Raises InvalidInput.
+    """
+    project = checked(slug)
+    with transaction.atomic():
+        project.save()
+        members = Membership.objects.filter(project__slug=DEMONSTRATION).values_list("user", "role")
+        owners = User.objects.filter(is_superuser=True, is_active=True).values_list("pk", flat=True)
+        roles = sorted({*members, *((owner, Role.ADMINISTRATOR.value) for owner in owners)})
+        Membership.objects.bulk_create(Membership(project=project, user_id=user, role=role) for user, role in roles)
+        after = {"slug": slug, "name": project.name, "members": [list(role) for role in roles]}
+        audit.record("project.opened", project, actor=None, project=project, after=after)
+    return project
+
+
+def checked(slug: str) -> Project:
+    """An unsaved project of that short name. Raises InvalidInput."""
+    project = Project(slug=slug, name=slug)
+    try:
+        project.full_clean()
+    except ValidationError as trouble:
+        raise InvalidInput(
+            f"«{slug}» cannot be a project: {'; '.join(trouble.messages)}",
+            remedy="Use small letters, digits and hyphens.",
+            project=slug,
+        ) from trouble
     return project

@@ -6,13 +6,13 @@ from typing import Any
 
 from django.core.management.base import CommandError, CommandParser
 
-from labdata import audit
 from labdata.access import find_project, find_user
 from labdata.errors import InvalidInput
 from labdata.intake import services
 from labdata.jobs import run_here
 from labdata.management.commands._base import ServiceCommand
 from labdata.models import Project, Upload
+from labdata.projects import checked, open_from_command_line
 
 DONE = {Upload.Outcome.IMPORTED, Upload.Outcome.IMPORTED_WITH_FINDINGS, Upload.Outcome.ALREADY_HELD}
 
@@ -77,24 +77,7 @@ class Command(ServiceCommand):
 def _project(slug: str, *, create: bool, dry: bool) -> Project:
     """The project, made when asked for; a dry run of a project that does not exist looks at an unsaved one."""
     if create and not Project.objects.filter(slug=slug).exists():
-        from django.core.exceptions import ValidationError  # noqa: PLC0415
-        from django.db import transaction  # noqa: PLC0415
-
-        project = Project(slug=slug, name=slug)
-        try:
-            project.full_clean()
-        except ValidationError as trouble:
-            raise InvalidInput(
-                f"«{slug}» cannot be a project: {'; '.join(trouble.messages)}",
-                remedy="Use small letters, digits and hyphens.",
-                project=slug,
-            ) from trouble
-        with transaction.atomic():
-            if dry:
-                return project
-            project.save()
-            audit.record("project.created", project, actor=None, project=project, after={"slug": slug, "name": slug})
-        return project
+        return checked(slug) if dry else open_from_command_line(slug)
     return find_project(slug)
 
 
