@@ -47,7 +47,7 @@ def _file(upload: Upload) -> dict[str, Any]:
 
 def _flags(project: Project) -> dict[str, int]:
     """How many flags count now, by rule."""
-    rules = Flag.objects.latest().filter(well__project=project).values_list("rule", flat=True)
+    rules = Flag.objects.in_force().filter(well__project=project).values_list("rule", flat=True)
     return dict(sorted(Counter(rules).items()))
 
 

@@ -48,7 +48,7 @@ def qc_runs(request: HttpRequest, slug: str) -> HttpResponse:
     context = {
         "page": page_of(request, rows.order_by("-pk")),
         "wells": project.wells.all(),
-        "latest": _by_rule(Flag.objects.latest().filter(well__project=project)),
+        "latest": _by_rule(Flag.objects.in_force().filter(well__project=project)),
         "severities": Severity.values,
     }
     return render(request, "qc/qc_runs.html", context)

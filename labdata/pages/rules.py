@@ -56,7 +56,7 @@ def rules(request: HttpRequest, slug: str) -> HttpResponse:
     """Every rule in the order in which they run, with the flags that count now; the versions of the thresholds."""
     project = open_project(request, slug)
     in_force = effective_rule_set(project)
-    flags = Flag.objects.latest().filter(well__project=project).order_by()
+    flags = Flag.objects.in_force().filter(well__project=project).order_by()
     counts = dict(flags.values_list("rule").annotate(Count("pk")))
     listed = [{**one, "flags_now": counts.get(one["id"], 0)} for one in explain.catalogue(in_force)]
     context = {"rules": listed, "in_force": in_force, "versions": versions(request.user, project)}
@@ -76,7 +76,7 @@ def rule(request: HttpRequest, slug: str, rule_id: str) -> HttpResponse:
         if made:
             messages.success(request, f"Version {made.version} of the thresholds is in force from the next QC run.")
             return redirect("rule", slug, rule_id)
-    flags = Flag.objects.latest().filter(well__project=project, rule=rule_id)
+    flags = Flag.objects.in_force().filter(well__project=project, rule=rule_id)
     flags = flags.select_related("well", "analysis__sample", "analysis__method").order_by("well", "pk")
     return render(request, "qc/rule.html", {"rule": told, "form": form, "page": page_of(request, flags)})
 

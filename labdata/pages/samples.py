@@ -60,7 +60,7 @@ def _particulars(at_hand: Sample) -> dict[str, Any]:
         "consignments": at_hand.consignments.select_related("laboratory"),
         "muds": _muds(at_hand),
         "analyses": _analyses(at_hand),
-        "other_flags": Flag.objects.latest().filter(analysis__sample=at_hand, result__isnull=True),
+        "other_flags": Flag.objects.in_force().filter(analysis__sample=at_hand, result__isnull=True),
     }
 
 
@@ -72,7 +72,7 @@ def _analyses(at_hand: Sample) -> list[dict[str, Any]]:
     )
     stands = standing(Result.objects.filter(analysis__sample=at_hand))
     flags: dict[int, list[Flag]] = defaultdict(list)
-    for flag in Flag.objects.latest().filter(analysis__sample=at_hand, result__isnull=False):
+    for flag in Flag.objects.in_force().filter(analysis__sample=at_hand, result__isnull=False):
         flags[flag.result_id or 0].append(flag)
     return [
         {"analysis": one, "rows": [(row, stands.get(row.pk), flags[row.pk]) for row in one.results.all()]}

@@ -75,7 +75,7 @@ def _counted(rows: QuerySet[Well]) -> QuerySet[Well]:
     return rows.annotate(
         n_samples=_count(Sample.objects.filter(well=OuterRef("pk")), "well"),
         n_analyses=_count(Analysis.objects.filter(sample__well=OuterRef("pk"), current=True), "sample__well"),
-        n_flags=_count(Flag.objects.latest().filter(well=OuterRef("pk")), "well"),
+        n_flags=_count(Flag.objects.in_force().filter(well=OuterRef("pk")), "well"),
     )
 
 
@@ -90,9 +90,9 @@ def well(request: HttpRequest, slug: str, pk: int) -> HttpResponse:
     at_hand = find(of_project(request, project), "well", pk=pk)
     samples = at_hand.samples.annotate(
         n_analyses=_count(Analysis.objects.filter(sample=OuterRef("pk"), current=True), "sample"),
-        n_flags=_count(Flag.objects.latest().filter(analysis__sample=OuterRef("pk")), "analysis__sample"),
+        n_flags=_count(Flag.objects.in_force().filter(analysis__sample=OuterRef("pk")), "analysis__sample"),
     )
-    flags = Flag.objects.latest().filter(well=at_hand).order_by("rule")
+    flags = Flag.objects.in_force().filter(well=at_hand).order_by("rule")
     context = {
         "well": at_hand,
         "page": page_of(request, samples.order_by("top_md_m", "label", "pk"), 100),

@@ -97,5 +97,5 @@ def _count_oldest(rows: QuerySet, field: str) -> tuple[int, datetime | None]:  #
 
 def flag_counts(project: Project) -> dict[str, int]:
     """Flags of the latest runs by severity."""
-    flags = Flag.objects.latest().filter(well__project=project)
+    flags = Flag.objects.in_force().filter(well__project=project)
     return dict(flags.order_by().values_list("severity").annotate(Count("pk")))
