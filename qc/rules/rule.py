@@ -119,4 +119,8 @@ def fired(outcome: pd.Series) -> list[int]:
 
 def say(number: float) -> str:
     """A number as a message shows it: four significant digits, no trailing noise."""
-    return f"{number:.4g}" if np.isfinite(number) else "unknown"
+    if np.isnan(number):
+        return "unknown"
+    if np.isinf(number):
+        return "any amount"
+    return f"{number:.0f}" if abs(number) >= 10_000 else f"{number:.4g}"

@@ -81,7 +81,8 @@ def frame(columns: Mapping[str, object], size: int) -> pd.DataFrame:
         for suffix, (default, kind) in VALUE_DEFAULTS.items():
             given = columns.get(f"{analyte}{suffix}", default)
             made[f"{analyte}{suffix}"] = np.full(size, given, dtype=kind) if np.isscalar(given) else given
-    return pd.DataFrame(made, index=pd.RangeIndex(size))
+    kinds = {name: object if isinstance(default, str) else type(default) for name, default in IDENTITY.items()}
+    return pd.DataFrame(made, index=pd.RangeIndex(size)).astype(kinds)
 
 
 def no_things(*columns: str) -> pd.DataFrame:

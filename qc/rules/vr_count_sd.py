@@ -66,11 +66,13 @@ def _wide(rows: pd.DataFrame, row: int, limit: float) -> Finding:
 
 def _astray(rows: pd.DataFrame, row: int) -> Finding:
     low, high = num(rows, row, "RO_MIN"), num(rows, row, "RO_MAX")
-    text = f"The mean Ro {say(num(rows, row, 'RO'))} % does not lie between its lowest ({say(low)}) and highest ({say(high)}) reading."
+    ro = num(rows, row, "RO")
+    side, end = ("below its lowest", low) if ro < low else ("above its highest", high)
+    text = f"The mean Ro {say(ro)} % lies {side} reading, {say(end)} %."
     more = {"alternatives": ["slip in the mean, lowest or highest reading", "columns of two samples mixed"],
             "discriminating_test": "ask the laboratory for the readings"}  # fmt: skip
     limit = [None if np.isnan(end) else float(end) for end in (low, high)]
-    return Finding(row, "RO", REJECT, text, ("RO", "RO_MIN", "RO_MAX", "RO_N"), num(rows, row, "RO"), limit, more=more)
+    return Finding(row, "RO", REJECT, text, ("RO", "RO_MIN", "RO_MAX", "RO_N"), ro, limit, more=more)
 
 
 RULE = Rule(

@@ -1,12 +1,16 @@
 """What must not matter: the order of rows, columns that a rule does not read, the unit of a report."""
 
+import json
+
 import numpy as np
 import pandas as pd
+import pytest
 from hypothesis import HealthCheck, given, settings
 from hypothesis import strategies as st
 
 from qc.rules import RULES
-from qc.rules.engine import run
+from qc.rules.engine import parameters, run
+from qc.rules.evidence import Witness
 from qc.rules.records import table_of
 from qc.rules.rule import OUTCOMES
 from qc.rules.table import Table
@@ -105,3 +109,29 @@ def test_the_unit_of_the_report_does_not_matter(toc, s2, decimals):
     if np.isclose(percent.rows["TOC"].iloc[0], rows["TOC"].iloc[0]):
         outcomes = [list(run(table, disabled=off)["index_recalc"].outcome) for table in (percent, scaled)]
         assert outcomes[0] == outcomes[1]
+
+
+ODD = [
+    [],
+    [{"method": "reflectance", "RO": "0.5"}],
+    [{"method": "carbon", "TOC": "1.2"}],
+    [{"method": "core"}],
+    [{"TOC": "0", "S1": "0", "S2": "0", "S3": "0", "PI": "0", "HI": "0", "TMAX": "0"}],
+    [{"TOC": ">5", "S1": ">1", "S2": ">2", "TMAX": "~430", "HI": "~40", "PI": "<1", "OI": "5", "S3": "99999"}],
+    [{"top_m": 100.0, "kind": "cuttings", "label": ""}] * 3,
+    [{"method": "reflectance", "RO": "5", "RO_MIN": "9"}],
+]
+
+
+@pytest.mark.parametrize("odd", ODD, ids=range(len(ODD)))
+def test_odd_tables_are_judged_and_their_evidence_is_json(odd):
+    """Nothing measured, only bounds, only zeros, no depth: an answer from every rule, and no NaN in what is shown."""
+    table = table_of(odd)
+    witness, answers = Witness(table), run(table)
+    assert set(answers) == {rule.id for rule in RULES}
+    for rule in RULES:
+        numbers = parameters(rule, {})
+        for finding in answers[rule.id].findings:
+            json.dumps(witness.record(rule, numbers, finding), allow_nan=False)
+            assert len(witness.fingerprint(rule, numbers, finding)) == 64
+            assert "nan" not in finding.message
