@@ -145,6 +145,16 @@ def _split(text: str) -> tuple[str, str, tuple[str, ...]]:
     return " ".join(rest.split()), unit_text, tuple(words)
 
 
+def unit_in(text: str, canonical: str) -> tuple[str, str]:
+    """(our name, text) of the unit in a header whose name nobody knows: in brackets, or a last word that fits; else ("", "")."""
+    for inside in _BRACKETS.findall(text):
+        if unit := units.parse(inside):
+            return unit, inside.strip()
+    last = re.split(r"[\s,;_]+", text.strip())[-1]
+    unit = units.parse(last)
+    return (unit, last) if units.factor(unit, canonical) is not None else ("", "")
+
+
 def _bare_unit(text: str) -> tuple[str, str]:
     """A unit that stands before or after the name without brackets: ``Al %``, ``TOC, wt.%``, ``% CaCO3``, ``depth ft``."""
     spaced = re.sub(r"(?<=%)(?=[A-Za-z])|(?<=[A-Za-z])(?=%$)|[,;:](?=\s|%)", " ", text)

@@ -22,16 +22,18 @@ OPEN = (Upload.Outcome.WAITING, Upload.Outcome.REFUSED, Upload.Outcome.FAILED)
 
 def receive(
     *, project: Project, name: str, content: bytes, user: User | None, lab: str = "", well: str = "",
-    create_wells: bool = False, answers: dict[str, str] | None = None, idem_key: str | None = None,
+    create_wells: bool = False, answers: dict[str, str] | None = None, idem_key: str | None = None, look: bool = False,
 ) -> Upload:  # fmt: skip
     """Keep a file's bytes and enqueue its reading. The same bytes again are answered at once, with nothing changed.
 
+    With ``look`` the file is read and then waits for a person, even when nothing has to be asked.
     The same ``idem_key`` again gives the first upload. ``user`` None is the service itself. Raises NotAllowed, NotFound or InvalidInput.
     """
     _may(user, project, create_wells)
     if idem_key and (before := Upload.objects.filter(project=project, job__idem_key=idem_key).first()):
         return before
     name = _file_name(name)
+    given = checked_answers(answers)
     sha256 = hashlib.sha256(content).hexdigest()
     stored_as = _keep(sha256, content)
     with transaction.atomic():
@@ -41,7 +43,8 @@ def receive(
         )  # fmt: skip
         upload = Upload.objects.create(
             project=project, source_file=source, file_name=name, laboratory_name=lab.strip()[:160], created_by=user,
-            options={"well": well.strip(), "create_wells": create_wells}, answers=_answers(answers),
+            options={"well": well.strip(), "create_wells": create_wells, "look": look} | said_by(given, {}, {}, user),
+            answers=given,
         )  # fmt: skip
         report = Report.objects.filter(source_file=source).first()
         if report is not None:
@@ -61,7 +64,7 @@ def receive(
 def answer_questions(*, upload: Upload, user: User | None, answers: dict[str, str]) -> Upload:
     """Add answers to those given before, and read the file again. Raises Conflict once the file is in."""
     _may(user, upload.project, bool(upload.options.get("create_wells")))
-    given = _answers(answers)
+    given = checked_answers(answers)
     with transaction.atomic():
         upload = Upload.objects.select_for_update().select_related("project").get(pk=upload.pk)
         if upload.outcome not in OPEN:
@@ -70,9 +73,10 @@ def answer_questions(*, upload: Upload, user: User | None, answers: dict[str, st
                 remedy="Reload the page.",
                 upload=upload.pk,
             )
-        upload.answers = {**upload.answers, **given}
-        upload.outcome = Upload.Outcome.RECEIVED
-        _enqueue(upload, user, None)
+        answers_now = {**upload.answers, **given}
+        upload.options |= said_by(answers_now, upload.answers, upload.options, user)
+        upload.answers = answers_now
+        read_again(upload, user)
         audit.record("upload.answered", upload, actor=user, project=upload.project, after={"answers": given})
     return upload
 
@@ -88,7 +92,7 @@ def preview(
     if report is not None:
         return held_entry(name, sha256, report, None)
     prepared = prepare_file(
-        Request(project, name, content, sha256, lab, well, create_wells, _answers(answers)), lambda note: None
+        Request(project, name, content, sha256, lab, well, create_wells, checked_answers(answers)), lambda note: None
     )
     counts = prepared.counts()
     if prepared.lands:
@@ -98,16 +102,31 @@ def preview(
 
 def prepare(upload: Upload, ctx: JobContext) -> Prepared:
     """Read and match the upload's file, outside any transaction."""
+    prepared = prepare_file(request_of(upload), lambda note: ctx.tick(note=note))
+    prepared.upload = upload
+    return prepared
+
+
+def request_of(upload: Upload) -> Request:
+    """What reading the upload's file starts from."""
     with default_storage.open(upload.source_file.stored_as) as stream:
         content = stream.read()
     options = upload.options
-    request = Request(
+    return Request(
         upload.project, upload.file_name, content, upload.source_file.sha256, upload.laboratory_name,
         options.get("well", ""), bool(options.get("create_wells")), upload.answers,
+        said_by=options.get("said_by", {}), look=bool(options.get("look")),
     )  # fmt: skip
-    prepared = prepare_file(request, lambda note: ctx.tick(note=note))
-    prepared.upload = upload
-    return prepared
+
+
+def said_by(
+    answers: dict[str, str], before: dict[str, str], options: dict[str, Any], user: User | None
+) -> dict[str, Any]:
+    """Options that say who gave each answer; an answer that stays as it was stays with its author."""
+    known = options.get("said_by", {})
+    name = user.username if user else ""
+    names = {id_: known.get(id_, "") if before.get(id_) == text else name for id_, text in answers.items()}
+    return {"said_by": names, "corrected_by": user.pk if user else None}
 
 
 def already_held(upload: Upload, report: Report) -> None:
@@ -152,7 +171,8 @@ def _file_name(name: str) -> str:
     return plain[-255:]
 
 
-def _answers(answers: dict[str, str] | None) -> dict[str, str]:
+def checked_answers(answers: dict[str, str] | None) -> dict[str, str]:
+    """Answers as texts by question id. Raises InvalidInput."""
     if answers is None:
         return {}
     if not isinstance(answers, dict) or not all(isinstance(value, (str, int, float)) for value in answers.values()):
@@ -168,6 +188,12 @@ def _keep(sha256: str, content: bytes) -> str:
     if default_storage.exists(path):
         return path
     return default_storage.save(path, ContentFile(content))
+
+
+def read_again(upload: Upload, user: User | None) -> None:
+    """Save the upload as it is and enqueue its reading. Inside the caller's transaction."""
+    upload.outcome = Upload.Outcome.RECEIVED
+    _enqueue(upload, user, None)
 
 
 def _enqueue(upload: Upload, user: User | None, idem_key: str | None) -> None:

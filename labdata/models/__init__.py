@@ -8,7 +8,7 @@ from labdata.models.logins import LoginFailure
 from labdata.models.methods import AnalysisRequest, Analyte, Method, ReferenceMaterial
 from labdata.models.projects import ApiToken, IdempotencyRecord, Membership, Project, Role, TokenScope
 from labdata.models.releases import Release
-from labdata.models.reports import Report, SourceColumn, SourceFile, SourceTable, Upload
+from labdata.models.reports import RememberedLayout, Report, SourceColumn, SourceFile, SourceTable, Upload
 from labdata.models.samples import Consignment, CustodyEvent, DepthKind, Laboratory, Sample, SampleKind
 from labdata.models.wells import (
     CasingShoe,
@@ -27,6 +27,6 @@ __all__ = [
     "Analysis", "AnalysisRequest", "AnalysisRole", "Analyte", "ApiToken", "AuditEntry", "CasingShoe", "Consignment",
     "CoreRun", "CustodyEvent", "DatumKind", "DepthKind", "FormationTop", "IdempotencyRecord", "Job", "JobEvent",
     "JobState", "Laboratory", "LoginFailure", "Membership", "Method", "MudInterval", "MudKind", "Project", "Qualifier",
-    "ReferenceMaterial", "Release", "Report", "Result", "Role", "Sample", "SampleKind", "SourceColumn", "SourceFile",
+    "ReferenceMaterial", "Release", "RememberedLayout", "Report", "Result", "Role", "Sample", "SampleKind", "SourceColumn", "SourceFile",
     "SourceTable", "SurveyStation", "SweeperBeat", "TokenScope", "Upload", "Well", "WellAlias", "WellIdentifier",
 ]  # fmt: skip

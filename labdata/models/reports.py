@@ -121,12 +121,15 @@ class Upload(models.Model):
         REFUSED = "refused", "refused"
         ALREADY_HELD = "already_held", "already held"
         FAILED = "failed", "failed"
+        WITHDRAWN = "withdrawn", "withdrawn"
 
     project = models.ForeignKey(Project, on_delete=models.PROTECT, related_name="uploads")
     source_file = models.ForeignKey(SourceFile, on_delete=models.PROTECT, related_name="uploads")
     file_name = models.CharField(max_length=255)
     laboratory_name = models.CharField(max_length=160, blank=True)
-    options = models.JSONField(default=dict, help_text="well, create_wells, dry_run")
+    options = models.JSONField(
+        default=dict, help_text="well, create_wells; look, remember; said_by: answer id -> name; corrected_by: user"
+    )
     answers = models.JSONField(default=dict, help_text="question id -> answer")
     outcome = models.CharField(max_length=24, choices=Outcome.choices, default=Outcome.RECEIVED)
     answer = models.JSONField(default=dict, blank=True)
@@ -148,6 +151,7 @@ class Upload(models.Model):
                         "refused",
                         "already_held",
                         "failed",
+                        "withdrawn",
                     ]
                 ),
                 name="upload_outcome_known",
@@ -156,3 +160,30 @@ class Upload(models.Model):
 
     def __str__(self) -> str:
         return self.file_name
+
+
+class RememberedLayout(models.Model):
+    """How a person corrected the mapping of one laboratory's layout, for the next file that has the same header.
+
+    ``fingerprint`` is of the header's texts and units in order (labdata/intake/layouts.py); ``mapping`` is
+    {"header_height": rows of a header that a person named, else 0, "columns": [{"offset", "header", "field", "unit"}]}.
+    """
+
+    project = models.ForeignKey(Project, on_delete=models.PROTECT, related_name="remembered_layouts")
+    laboratory_name = models.CharField(max_length=160, blank=True)
+    fingerprint = models.CharField(max_length=64)
+    headers = models.CharField(max_length=300, help_text="the header's texts, to know the layout by")
+    mapping = models.JSONField(default=dict)
+    made_by = models.ForeignKey(settings.AUTH_USER_MODEL, on_delete=models.PROTECT, null=True, blank=True)
+    at = models.DateTimeField(default=timezone.now)
+
+    class Meta:
+        ordering = ["laboratory_name", "-at"]
+        constraints = [
+            models.UniqueConstraint(
+                fields=["project", "laboratory_name", "fingerprint"], name="remembered_layout_once"
+            )
+        ]
+
+    def __str__(self) -> str:
+        return f"{self.laboratory_name or 'laboratory not named'}: {self.headers}"
