@@ -2,21 +2,27 @@
 
 from collections import defaultdict
 from dataclasses import dataclass, replace
-from typing import Any
+from typing import TYPE_CHECKING, Any
 
 from labdata.intake import units
 from labdata.intake.fields import CARBON, PYROLYSIS_PEAKS, element_symbols, field_types, synonyms
 from labdata.intake.findings import Findings, place_name
-from labdata.intake.headers import NAME, Guess, fold, formula
+from labdata.intake.headers import NAME, Guess, fold, formula, unit_in
 from labdata.intake.tables import Head, Table
-from labdata.intake.workbook import address, cell_text, letters
+from labdata.intake.workbook import cell_text, column_name, line_letter
+
+if TYPE_CHECKING:
+    from labdata.intake.corrections import Said
 
 DEPTH_CHECK = "DEPTH_CHECK"
 
 
 @dataclass
 class Column:
-    """A mapped column. ``unit`` is our name of the unit reported, "" while it is not known; ``method`` "" for identity."""
+    """A mapped column. ``unit`` is our name of the unit reported, "" while it is not known; ``method`` "" for identity.
+
+    ``said`` names the person whose word the field is, ``unit_said`` is True when the unit is one's word.
+    """
 
     index: int
     header: str
@@ -29,10 +35,20 @@ class Column:
     factor: float = 1.0
     decimals: int = 0
     words: tuple[str, ...] = ()
+    said: str = ""
+    unit_said: bool = False
+
+    turned: bool = False
 
     @property
     def letter(self) -> str:
-        return letters(self.index)
+        """The column's letters; the row's number where samples run along the columns."""
+        return line_letter(self.index, self.turned)
+
+    @property
+    def place(self) -> str:
+        """``Column F``, or ``Row 6`` where samples run along the columns."""
+        return f"{'Row' if self.turned else 'Column'} {self.letter}"
 
     @property
     def is_result(self) -> bool:
@@ -61,10 +77,16 @@ class Mapping:
         return [column for column in self.columns if column.is_result]
 
 
-def map_columns(table: Table, findings: Findings) -> Mapping:
-    """Give every column its field; ask where two columns claim the same one and cannot be told apart."""
-    known, unknown = _first_reading(table)
+def map_columns(table: Table, findings: Findings, said: "dict[int, Said] | None" = None) -> Mapping:
+    """Give every column its field; ask where two columns claim the same one and cannot be told apart.
+
+    ``said``: column -> what a person says it is, which nothing here overrules.
+    """
+    told_fields = {index: one for index, one in (said or {}).items() if one.field}
+    known, unknown = _first_reading(table, told_fields)
     columns = [_column(head, guess) for head, guess in known]
+    set_columns, left_out = _as_said(table, told_fields)
+    columns += set_columns
     told = _sulfur_by_combustion(unknown, columns) + _readings_count(unknown, columns)
     columns += told
     unknown = [head for head in unknown if head.index not in {column.index for column in told}]
@@ -72,23 +94,56 @@ def map_columns(table: Table, findings: Findings) -> Mapping:
     for column in columns:
         by_field[column.field].append(column)
     kept: list[Column] = []
-    dropped: list[tuple[Column, str]] = []
+    dropped: list[tuple[Column, str]] = left_out
     for field, claims in by_field.items():
         chosen, rest = _settle(field, claims, by_field, table, findings)
         kept += chosen
         dropped += rest
     _name_by_lab_number(kept)
     _give_methods(kept)
+    _units_said(kept, said or {})
     _note_likeness(table, kept, findings)
     _report_unmapped(table, unknown, dropped, findings)
+    for column in kept:
+        column.turned = table.sheet.turned
     names = [head.text for head in unknown] + [column.header for column, _ in dropped]
     return Mapping(sorted(kept, key=lambda column: column.index), names)
 
 
-def _first_reading(table: Table) -> tuple[list[tuple[Head, Guess]], list[Head]]:
+def _as_said(table: Table, told: "dict[int, Said]") -> tuple[list[Column], list[tuple[Column, str]]]:
+    """(columns that a person gave a field, columns that a person leaves out with the reason)."""
+    made, left_out = [], []
+    for head in table.heads:
+        one = told.get(head.index)
+        if one is None:
+            continue
+        kind = field_types().get(one.field)
+        if kind is None:
+            left_out.append((Column(head.index, head.text, "", "", "", 1.0, one.reason), one.reason))
+            continue
+        unit, unit_text = unit_in(head.text, kind.unit or "m")
+        guess = Guess(one.field, unit, unit_text, 1.0, one.reason, head.guess.words if head.guess else ())
+        made.append(replace(_column(head, guess), said=one.reason))
+    return made, left_out
+
+
+def _units_said(columns: list[Column], said: "dict[int, Said]") -> None:
+    """Give the units that a person has said."""
+    for column in columns:
+        one = said.get(column.index)
+        if one is not None and one.unit:
+            column.unit = column.unit_text = one.unit
+            column.unit_said, column.confidence = True, 1.0
+            if not column.said:
+                column.reason += f"; unit {one.reason}"
+
+
+def _first_reading(table: Table, told: "dict[int, Said]") -> tuple[list[tuple[Head, Guess]], list[Head]]:
     """(heads with a reading, heads without). Names that say only "Name" are told by the values below them."""
     known, unknown, unclear = [], [], []
     for head in table.heads:
+        if head.index in told:
+            continue
         guess = head.guess
         if guess is None and (code := formula(head.unit_cell)):
             guess = Guess(code, "", "", 0.7, f"«{head.unit_cell}» below it is the formula of {code}")
@@ -99,7 +154,7 @@ def _first_reading(table: Table) -> tuple[list[tuple[Head, Guess]], list[Head]]:
         else:
             known.append((head, guess))
     for head in unclear:
-        taken = {guess.field for _, guess in known}
+        taken = {guess.field for _, guess in known} | {one.field for one in told.values()}
         told = _told_by_values(table, head, taken)
         known.append((head, told)) if told else unknown.append(head)
     return known, unknown
@@ -169,6 +224,10 @@ def _settle(
     """(columns kept, columns dropped with the reason) among those that claim ``field``."""
     if len(claims) == 1 or field == "LAB":
         return claims, []
+    set_ones = [column for column in claims if column.said]
+    if len(set_ones) == 1 and field not in {"TOP", "BASE", "SAMPLE"}:
+        best = set_ones[0]
+        return [best], [(column, f"{best.letter} is taken for {field}") for column in claims if column is not best]
     if field in {"TOP", "BASE"}:
         return _depths(claims)
     if field == "SAMPLE":
@@ -246,7 +305,7 @@ def _ask_which(
         f"Columns {places} all read as {field}, and nothing tells them apart.",
         [column.letter for column in claims],
         sheet=table.sheet.name,
-        cell=address(table.top + table.height - 1, first.index),
+        cell=table.sheet.address(table.top + table.height - 1, first.index),
         value=first.header,
         remedy=f"Answer with the letter of the column to take for {field}; the other is left out and named.",
     )
@@ -281,11 +340,11 @@ def _report_unmapped(table: Table, unknown: list[Head], dropped: list[tuple[Colu
         filled = sum(1 for cell in table.cells(index) if cell_text(cell))
         if not filled:
             continue
-        message = f"Column {letters(index)} «{text}» " + (
+        message = f"{column_name(index, table.sheet.turned)} «{text}» " + (
             f"was left out: {why}." if why else "was not understood and is left out."
         )
         findings.note(
-            "unmapped_column", message, sheet=table.sheet.name, cell=address(row, index), value=text,
+            "unmapped_column", message, sheet=table.sheet.name, cell=table.sheet.address(row, index), value=text,
             remedy=f"Its {filled} filled cells stay in the kept file.",
         )  # fmt: skip
 
@@ -296,9 +355,9 @@ def _note_likeness(table: Table, columns: list[Column], findings: Findings) -> N
         if "is close to" in column.reason:
             findings.note(
                 "header_by_likeness",
-                f"Column {column.letter} is read as {column.field}: {column.reason}.",
+                f"{column.place} is read as {column.field}: {column.reason}.",
                 sheet=table.sheet.name,
-                cell=address(table.top + table.height - 1, column.index),
+                cell=table.sheet.address(table.top + table.height - 1, column.index),
                 value=column.header,
                 remedy="If it is not, correct the header and send the file again.",
             )

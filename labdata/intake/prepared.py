@@ -5,10 +5,12 @@ from datetime import date
 from typing import Any
 
 from labdata.intake.columns import Column
+from labdata.intake.corrections import Said
 from labdata.intake.findings import Findings
 from labdata.intake.matching import WellPlan
 from labdata.intake.reading import Settled
 from labdata.intake.rows import Row
+from labdata.intake.tables import Table
 from labdata.models import Project, Upload
 
 KIND_ORDER = (
@@ -27,7 +29,11 @@ KIND_ORDER = (
 
 @dataclass
 class PreparedTable:
-    """One table's columns and rows; ``settled`` holds the values of each result column by its place."""
+    """One table's columns and rows; ``settled`` holds the values of each result column by its place.
+
+    ``found`` is where it stood; ``said`` what people say of its columns, now or for its layout before; ``corrected``
+    is True when something was said for this file itself, ``header_said`` when a person named the header rows.
+    """
 
     sheet: str
     cell_range: str
@@ -35,6 +41,15 @@ class PreparedTable:
     unmapped: list[str]
     rows: list[Row]
     settled: dict[int, Settled]
+    found: Table | None = None
+    said: dict[int, Said] = field(default_factory=dict)
+    corrected: bool = False
+    header_said: bool = False
+
+    @property
+    def orientation(self) -> str:
+        """ "columns" where each sample has a column in the file, else "rows"."""
+        return "columns" if self.found is not None and self.found.sheet.turned else "rows"
 
     @property
     def results(self) -> list[Column]:
@@ -51,6 +66,8 @@ class PreparedTable:
         return {
             "sheet": self.sheet, "range": self.cell_range, "kind": self.methods[0] if self.methods else "",
             "columns": [column.as_dict() for column in self.columns], "unmapped": self.unmapped,
+            "header_rows": [self.found.top + 1, self.found.top + self.found.height] if self.found else [],
+            "orientation": self.orientation,
         }  # fmt: skip
 
     def tally(self) -> dict[str, int]:

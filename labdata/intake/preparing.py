@@ -3,18 +3,20 @@
 import time
 from collections.abc import Callable
 from dataclasses import dataclass, field
-from itertools import zip_longest
 
 from labdata.intake import values, workbook
 from labdata.intake.columns import Column, Mapping, map_columns
+from labdata.intake.corrections import Corrections, Said, add_heads
 from labdata.intake.errors import UnreadableFile
 from labdata.intake.findings import Findings
+from labdata.intake.layouts import Memory
 from labdata.intake.matching import SampleDirectory, WellDirectory, WellMatcher, fullest_first
 from labdata.intake.prepared import Prepared, PreparedTable
 from labdata.intake.reading import Cells, Teller, decimal_comma, read_column
 from labdata.intake.rows import Row, RowReader
-from labdata.intake.tables import Layout, Table, find_tables
+from labdata.intake.tables import Layout, Table, find_tables, tables_under
 from labdata.intake.titles import Facts, read_title
+from labdata.intake.turned import find_turned_tables
 from labdata.intake.unitchoice import choose_units
 from labdata.intake.versions import settle_version
 from labdata.intake.wellhead import well_details
@@ -22,11 +24,15 @@ from labdata.intake.workbook import Sheet, address
 from labdata.models import Project
 
 Tick = Callable[[str], None]
+CONFIRM, STORE_IT = "confirm", "store it"
 
 
 @dataclass
 class Request:
-    """What came with the file: names, permission to make wells, answers given."""
+    """What came with the file: names, permission to make wells, answers given and by whom.
+
+    ``look``: nothing is stored before a person has looked. ``book``: the file as read already.
+    """
 
     project: Project
     name: str
@@ -36,6 +42,9 @@ class Request:
     well: str = ""
     create_wells: bool = False
     answers: dict[str, str] = field(default_factory=dict)
+    said_by: dict[str, str] = field(default_factory=dict)
+    look: bool = False
+    book: workbook.Workbook | None = None
 
 
 def prepare_file(request: Request, tick: Tick) -> Prepared:
@@ -43,13 +52,25 @@ def prepare_file(request: Request, tick: Tick) -> Prepared:
     started = time.perf_counter()
     made = Prepared(request.project, request.name, request.sha256, Findings(dict(request.answers)))
     try:
-        book = workbook.read(request.name, request.content)
+        book = request.book or workbook.read(request.name, request.content)
     except UnreadableFile as trouble:
         made.findings.error(trouble.code, trouble.message, remedy=trouble.remedy, value=request.name)
     else:
         _FileReader(request, made, tick, WellDirectory(request.project)).take(book)
+    if request.look and not made.findings.has("error"):
+        _look_first(made.findings)
     made.seconds = time.perf_counter() - started
     return made
+
+
+def _look_first(findings: Findings) -> None:
+    findings.ask(
+        CONFIRM,
+        "confirm",
+        "You asked to look before anything is stored.",
+        [STORE_IT],
+        remedy=f"Look at the tables on the mapping desk, then answer «{CONFIRM}» with «{STORE_IT}».",
+    )
 
 
 @dataclass
@@ -63,6 +84,8 @@ class _FileReader:
     whole: Facts = field(default_factory=Facts)
     named: list[tuple[Row, str, str]] = field(default_factory=list)
     sheets_with_tables: int = 0
+    said: Corrections = field(default_factory=Corrections)
+    memory: Memory = field(default_factory=Memory)
 
     @property
     def findings(self) -> Findings:
@@ -70,7 +93,11 @@ class _FileReader:
 
     def take(self, book: workbook.Workbook) -> None:
         """Fill ``made`` from the workbook."""
-        layouts = [(sheet, find_tables(sheet)) for sheet in book.sheets]
+        self.said = Corrections.of(self.request.answers, self.request.said_by, self.findings)
+        layouts = [(sheet, self._layout(sheet)) for sheet in book.sheets]
+        self.whole = read_title([line for _, layout in layouts for line in layout.title])
+        self.memory = Memory.of(self.request.project, self.request.lab or self.whole.laboratory)
+        layouts = [(sheet, self._remembered(sheet, layout)) for sheet, layout in layouts]
         for name in book.hidden:
             message = f"Sheet «{name}» is hidden and was not read."
             self.findings.note("hidden_sheet", message, sheet=name, remedy="Show it if it holds results.")
@@ -87,7 +114,21 @@ class _FileReader:
         well_details(self.made)
         self.made.laboratory = self.request.lab or self.whole.laboratory
         self.made.reported_on = self.whole.reported_on
+        self.said.report_unused(self.findings)
         settle_version(self.request.name, self.whole, self.made)
+
+    def _layout(self, sheet: Sheet) -> Layout:
+        """The sheet's tables: below the header rows that a person has named, else as found."""
+        rows = self.said.headers.get(sheet.name)
+        if rows is not None:
+            return tables_under(sheet, rows)
+        layout = find_tables(sheet)
+        return layout if layout.tables else find_turned_tables(sheet) or layout
+
+    def _remembered(self, sheet: Sheet, layout: Layout) -> Layout:
+        """The sheet's tables below header rows as they were named for this layout before, unless they are named now."""
+        rows = [] if sheet.name in self.said.headers else self.memory.headers(sheet)
+        return tables_under(sheet, rows) if rows else layout
 
     def _sheet(self, sheet: Sheet, layout: Layout) -> None:
         facts = read_title(layout.title)
@@ -95,7 +136,12 @@ class _FileReader:
         facts.nd = facts.nd or self.whole.nd
         for table in layout.tables:
             self.tick(f"reading {sheet.name or self.request.name}")
-            prepared, mapping = _take_table(table, facts, self.findings)
+            own = self.said.of_table(table)
+            said = self.memory.merge(table, own, self.findings)
+            add_heads(table, said)
+            prepared, mapping = _take_table(table, facts, self.findings, said)
+            prepared.header_said = sheet.name in self.said.headers or self.memory.names_header(table)
+            prepared.said, prepared.corrected = said, bool(own) or sheet.name in self.said.headers
             self.made.tables.append(prepared)
             self._name_wells(sheet, facts, mapping, prepared)
         if layout.stray and layout.tables:
@@ -117,10 +163,10 @@ class _FileReader:
         if self.request.well:
             self._option_unused(sheet, column)
         for row in rock:
-            cell = address(row.line - 1, column.index)
+            cell = sheet.address(row.line - 1, column.index)
             if row.well == ("", ""):
-                message = f"Row {row.line} names no well."
-                remedy = f"Fill column {column.letter}."
+                message = f"{sheet.row_name(row.line)} names no well."
+                remedy = f"Fill {column.place.lower()}."
                 self.findings.error("row_without_well", message, sheet=sheet.name, cell=cell, remedy=remedy)
             else:
                 self.named.append((row, sheet.name, cell))
@@ -128,7 +174,7 @@ class _FileReader:
     def _option_unused(self, sheet: Sheet, column: Column) -> None:
         self.findings.warning(
             "well_option_unused",
-            f"The file names its wells in column {column.letter}; «{self.request.well}» was not used.",
+            f"The file names its wells in {column.place.lower()}; «{self.request.well}» was not used.",
             sheet=sheet.name,
             cell=column.letter,
             value=self.request.well,
@@ -175,16 +221,6 @@ def _report_stray(sheet: Sheet, rows: list[int], findings: Findings) -> None:
 
 
 def _no_table(name: str, layouts: list[tuple[Sheet, Layout]], findings: Findings) -> None:
-    for sheet, _ in layouts:
-        if _lies_on_its_side(sheet):
-            findings.error(
-                "table_on_its_side",
-                f"In sheet «{sheet.name}» of «{name}» the samples run along the columns.",
-                sheet=sheet.name,
-                cell="A1",
-                remedy="Turn the table (paste it transposed), so that each sample has a row.",
-            )
-            return
     seen = next((line for _, layout in layouts for line in layout.title), [])
     shown = " | ".join(seen)[:200]
     findings.error(
@@ -198,17 +234,11 @@ def _no_table(name: str, layouts: list[tuple[Sheet, Layout]], findings: Findings
     )
 
 
-def _lies_on_its_side(sheet: Sheet) -> bool:
-    """True when the sheet would hold a table if rows and columns were exchanged."""
-    if not sheet.rows or len(sheet.rows) > 400:
-        return False
-    turned = [list(column) for column in zip_longest(*sheet.rows, fillvalue="")]
-    return any(table.rows for table in find_tables(Sheet(sheet.name, turned)).tables)
-
-
-def _take_table(table: Table, facts: Facts, findings: Findings) -> tuple[PreparedTable, Mapping]:
+def _take_table(
+    table: Table, facts: Facts, findings: Findings, said: dict[int, Said] | None = None
+) -> tuple[PreparedTable, Mapping]:
     """One table read whole: identity of rows, units, values."""
-    mapping = map_columns(table, findings)
+    mapping = map_columns(table, findings, said)
     comma = decimal_comma(table, mapping, findings)
     raw = {column.index: table.cells(column.index) for column in mapping.results}
     read = {
@@ -226,7 +256,8 @@ def _take_table(table: Table, facts: Facts, findings: Findings) -> tuple[Prepare
         column.index: Teller(table, column, findings, facts.nd).settle(read[column.index], raw[column.index], kept)
         for column in mapping.results
     }
-    return PreparedTable(table.sheet.name, table.cell_range, mapping.columns, mapping.unmapped, rows, settled), mapping
+    made = PreparedTable(table.sheet.name, table.cell_range, mapping.columns, mapping.unmapped, rows, settled, table)
+    return made, mapping
 
 
 def _filled(table: Table, read: dict[int, Cells]) -> list[bool]:
@@ -245,7 +276,7 @@ def _no_rows(table: Table, findings: Findings) -> None:
             "no_rows",
             f"The table at {table.cell_range} has a header and no rows.",
             sheet=table.sheet.name,
-            cell=address(table.top, table.heads[0].index),
+            cell=table.sheet.address(table.top, table.heads[0].index),
             remedy="Send the file with its values.",
         )
 
@@ -258,7 +289,7 @@ def _place_columns(table: Table, mapping: Mapping, findings: Findings) -> None:
             "no_sample_column",
             f"The table at {table.cell_range} has neither a sample nor a depth column; its headers are {headers}.",
             sheet=table.sheet.name,
-            cell=address(table.top, table.heads[0].index),
+            cell=table.sheet.address(table.top, table.heads[0].index),
             value=headers,
             remedy="Head one column Sample or Depth.",
         )

@@ -9,7 +9,7 @@ from labdata.intake.fields import field_types
 from labdata.intake.findings import Findings, place_name
 from labdata.intake.tables import Table
 from labdata.intake.values import BLANK, EMPTY, Reading, comma_role, read_number, read_text
-from labdata.intake.workbook import Cell, Sheet, address, cell_text
+from labdata.intake.workbook import Cell, Sheet, cell_text
 
 MAX_FINDINGS_A_COLUMN = 300
 # Quantities that have no detection limit: "n.d." can only mean "not determined" there.
@@ -57,11 +57,11 @@ def decimal_comma(table: Table, mapping: Mapping, findings: Findings) -> str:
     for row, column in _three_digits(table, mapping):
         text = cell_text(table.sheet.rows[row][column.index])
         return findings.ask(
-            f"comma:{place_name(table.sheet.name, address(table.top, table.heads[0].index))}",
+            f"comma:{place_name(table.sheet.name, table.sheet.address(table.top, table.heads[0].index))}",
             "comma_ambiguous",
             f"In «{text}» the comma may mark thousands or decimals, and no other cell of the table tells.",
             ["thousands", "decimal"],
-            sheet=table.sheet.name, cell=address(row, column.index), value=text,
+            sheet=table.sheet.name, cell=table.sheet.address(row, column.index), value=text,
         ) or values.UNKNOWN  # fmt: skip
     return values.THOUSANDS
 
@@ -148,6 +148,7 @@ class Teller:
     def __init__(self, table: Table, column: Column, findings: Findings, nd: str) -> None:
         self.sheet, self.column, self.findings = table.sheet.name, column, findings
         self.rows = table.rows
+        self.address = table.sheet.address
         self.shown_decimals = table.sheet.formats.get(column.index, 0)
         self.canonical = field_types()[column.field].unit
         self.nd_blank = column.field in NO_LIMIT or self._nd_answer(nd)
@@ -185,10 +186,9 @@ class Teller:
             if reading.note:
                 self._remember("null code", row)
             return BLANK, None
-        cell = address(row, self.column.index)
         if reading.state == values.AMBIGUOUS:
             return "finding", None  # the question about commas names the table's first such cell and stops the file
-        self._unreadable(cell, text, reading.note)
+        self._unreadable(row, text, reading.note)
         return "finding", None
 
     def _value(self, row: int, reading: Reading, text: str) -> tuple[str, float | None]:
@@ -204,7 +204,7 @@ class Teller:
             own = units.factor(said, self.canonical) if said else None
             if own is None:
                 self._unreadable(
-                    address(row, self.column.index),
+                    row,
                     text,
                     f"carries «{reading.unit}», which is no unit of {self.column.field}",
                 )
@@ -216,7 +216,8 @@ class Teller:
             self._remember(reading.note, row)
         return values.VALUE, reading.value if factor == 1 else float(f"{reading.value * factor:.15g}")
 
-    def _unreadable(self, cell: str, text: str, note: str) -> None:
+    def _unreadable(self, row: int, text: str, note: str) -> None:
+        cell = self.address(row, self.column.index)
         id_ = f"cell:{place_name(self.sheet, cell)}"
         if str(self.findings.answers.get(id_, "")).strip().casefold() in {"blank", "leave out"}:
             self.findings.warning(
@@ -237,10 +238,10 @@ class Teller:
                 remedy=f"Correct the cell, or answer «{id_}» with «blank» to leave it out.",
             )  # fmt: skip
         else:
-            self._remember("unreadable", address_row(cell))
+            self._remember("unreadable", row)
 
     def _remember(self, what: str, row: int) -> None:
-        self.seen.setdefault(what, []).append(address(row, self.column.index))
+        self.seen.setdefault(what, []).append(self.address(row, self.column.index))
 
     def close(self) -> None:
         """Report, once a column, what was read in a way that a person may want to know."""
@@ -290,8 +291,3 @@ def _quoted(text: str) -> str:
 
 def _some(cells: list[str]) -> str:
     return ", ".join(cells[:3]) + (f" and {len(cells) - 3} more" if len(cells) > 3 else "")
-
-
-def address_row(cell: str) -> int:
-    """The row, counted from 0, of an address."""
-    return int("".join(letter for letter in cell if letter.isdigit())) - 1

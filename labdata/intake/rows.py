@@ -10,7 +10,7 @@ from labdata.intake.kinds import kind_of, reference_name, role_of
 from labdata.intake.tables import Table
 from labdata.intake.titles import Facts
 from labdata.intake.units import FOOT_M
-from labdata.intake.workbook import address, cell_text
+from labdata.intake.workbook import cell_text
 
 DEEPEST_M = 13_000.0  # the deepest borehole drilled is 12,262 m
 HEAD_FIELDS = ("LATITUDE", "LONGITUDE", "OPERATOR", "ELEVATION", "DATUM", "WELL_ALIAS")  # of the well, not the sample
@@ -105,7 +105,7 @@ class RowReader:
             uwi = uwis[at] if uwis else ""
             if not name and not uwi and above != ("", "") and self.has_values[at]:
                 name, uwi = above
-                filled.append(address(row.line - 1, name_column.index if name_column else 0))
+                filled.append(self.table.sheet.address(row.line - 1, name_column.index if name_column else 0))
             elif name in {'"', "''", "do.", "ditto", "″"}:
                 name, uwi = above[0], uwi or above[1]
             row.well = (name, uwi)
@@ -174,7 +174,9 @@ class RowReader:
         if kind is None:
             if not role_of(text):
                 column, _ = self._column("KIND")
-                self.unknown_kinds.setdefault(text, address(row.line - 1, column.index if column else 0))
+                self.unknown_kinds.setdefault(
+                    text, self.table.sheet.address(row.line - 1, column.index if column else 0)
+                )
             return self.kind_default
         return kind
 
@@ -186,7 +188,7 @@ class RowReader:
             )  # fmt: skip
 
     def _error(self, column: Column | None, row: Row, text: str, *, code: str, message: str, remedy: str) -> None:
-        cell = address(row.line - 1, column.index if column else 0)
+        cell = self.table.sheet.address(row.line - 1, column.index if column else 0)
         self.findings.error(code, message, sheet=self.sheet, cell=cell, value=text, remedy=remedy)
 
     def _depths(self, rows: list[Row]) -> None:
@@ -238,8 +240,8 @@ class RowReader:
         span = f" It runs from {min(numbers):g} to {max(numbers):g}." if numbers else ""
         return self.findings.ask(
             f"unit:{place_name(self.sheet, column.letter)}", "depth_unit_missing",
-            f"Column {column.letter} «{column.header}» gives depth without a unit.{span}", ["m", "ft"],
-            sheet=self.sheet, cell=address(self.table.top + self.table.height - 1, column.index), value=column.header,
+            f"{column.place} «{column.header}» gives depth without a unit.{span}", ["m", "ft"],
+            sheet=self.sheet, cell=self.table.sheet.address(self.table.top + self.table.height - 1, column.index), value=column.header,
         )  # fmt: skip
 
     def _depth(self, column: Column, row: Row, text: str, unit: str) -> tuple[float | None, float | None]:
@@ -334,9 +336,13 @@ class RowReader:
 
     def _skip(self, row: Row, why: str) -> None:
         row.kept = False
-        cell = address(row.line - 1, self.table.heads[0].index)
+        cell = self.table.sheet.address(row.line - 1, self.table.heads[0].index)
         self.findings.note(
-            "row_skipped", f"Row {row.line} was left out: {why}.", sheet=self.sheet, cell=cell, remedy="Nothing to do."
+            "row_skipped",
+            f"{self.table.sheet.row_name(row.line)} was left out: {why}.",
+            sheet=self.sheet,
+            cell=cell,
+            remedy="Nothing to do.",
         )
 
     def _nameless(self, rows: list[Row]) -> None:
@@ -351,10 +357,10 @@ class RowReader:
                 for f in self.findings.found
                 if f.sheet == self.sheet
             ):
-                cell = address(row.line - 1, self.table.heads[0].index)
+                cell = self.table.sheet.address(row.line - 1, self.table.heads[0].index)
                 self.findings.error(
                     "row_without_sample",
-                    f"Row {row.line} has values but neither a sample number nor a depth.",
+                    f"{self.table.sheet.row_name(row.line)} has values but neither a sample number nor a depth.",
                     sheet=self.sheet,
                     cell=cell,
                     remedy="Give the row a sample number or a depth, or mark it as blank or standard.",
@@ -376,8 +382,8 @@ class RowReader:
             if abs(second.top * factor - row.top_m) > room:
                 self.findings.warning(
                     "depths_disagree",
-                    f"Row {row.line}: {row.top_text} {main.unit} is {row.top_m:.2f} m, but column {column.letter} says {text} {column.unit} ({second.top * factor:.2f} m).",
-                    sheet=self.sheet, cell=address(row.line - 1, column.index), value=text, remedy=f"Column {main.letter} is taken; ask the laboratory which is right.",
+                    f"{self.table.sheet.row_name(row.line)}: {row.top_text} {main.unit} is {row.top_m:.2f} m, but {column.place.lower()} says {text} {column.unit} ({second.top * factor:.2f} m).",
+                    sheet=self.sheet, cell=self.table.sheet.address(row.line - 1, column.index), value=text, remedy=f"{main.place} is taken; ask the laboratory which is right.",
                 )  # fmt: skip
 
 

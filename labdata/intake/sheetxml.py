@@ -11,6 +11,7 @@ if TYPE_CHECKING:
 _MAIN = "{http://schemas.openxmlformats.org/spreadsheetml/2006/main}"
 _REL = "{http://schemas.openxmlformats.org/officeDocument/2006/relationships}"
 _STYLED = re.compile(rb'<c r="([A-Z]+)\d+" s="(\d+)"(?! t="s")')
+_STYLED_ROW = re.compile(rb'<c r="[A-Z]+(\d+)" s="(\d+)"(?! t="s")')
 _CELL = re.compile(rb'<c r="([A-Z]+)(\d+)"([^>]*?)(?:/>|>(.*?)</c>)', re.S)
 _STORED = re.compile(rb"<v>(.*?)</v>|<is>", re.S)
 _BUILT_IN = {
@@ -25,6 +26,7 @@ _BUILT_IN = {
     40: "#,##0.00",
 }
 _MAX_STYLES = 4096
+ROWS_BY_ROW = 400  # sheets up to so many rows may hold a sample a column, so formats are told by row too
 
 
 def add_formats(archive: zipfile.ZipFile, sheets: "list[Sheet]") -> None:
@@ -35,6 +37,8 @@ def add_formats(archive: zipfile.ZipFile, sheets: "list[Sheet]") -> None:
         if path := paths.get(sheet.name):
             xml = archive.read(path)
             _formats(sheet, xml, styles)
+            if len(sheet.rows) <= ROWS_BY_ROW:
+                _row_formats(sheet, xml, styles)
             if b't="e"' in xml or b"<f" in xml:
                 _faults(sheet, xml)
 
@@ -73,13 +77,24 @@ def _index(name: bytes) -> int:
 
 def _formats(sheet: "Sheet", xml: bytes, styles: list[str]) -> None:
     for column, style in set(_STYLED.findall(xml)):
-        code = styles[int(style)] if int(style) < len(styles) else ""
-        shown = re.search(r"0\.(0+)", code)
-        index = _index(column)
-        if shown:
-            sheet.formats[index] = max(sheet.formats.get(index, 0), len(shown.group(1)))
-        if "%" in re.sub(r'"[^"]*"|\\.', "", code):
-            sheet.percent.add(index)
+        _note_format(_index(column), _code(styles, style), sheet.formats, sheet.percent)
+
+
+def _row_formats(sheet: "Sheet", xml: bytes, styles: list[str]) -> None:
+    for row, style in set(_STYLED_ROW.findall(xml)):
+        _note_format(int(row) - 1, _code(styles, style), sheet.row_formats, sheet.row_percent)
+
+
+def _code(styles: list[str], style: bytes) -> str:
+    return styles[int(style)] if int(style) < len(styles) else ""
+
+
+def _note_format(index: int, code: str, decimals: dict[int, int], percent: set[int]) -> None:
+    shown = re.search(r"0\.(0+)", code)
+    if shown:
+        decimals[index] = max(decimals.get(index, 0), len(shown.group(1)))
+    if "%" in re.sub(r'"[^"]*"|\\.', "", code):
+        percent.add(index)
 
 
 def _faults(sheet: "Sheet", xml: bytes) -> None:

@@ -6,7 +6,7 @@ from dataclasses import dataclass, field
 from labdata.intake import units
 from labdata.intake.fields import element_symbols, field_types
 from labdata.intake.headers import NAME, Guess, is_unit_or_formula, recognise
-from labdata.intake.workbook import Cell, Sheet, address, cell_text
+from labdata.intake.workbook import Cell, Sheet, cell_text
 
 MAX_HEADER_ROWS = 4
 _NOTE_WORDS = (
@@ -59,7 +59,7 @@ class Table:
         """``A5:Q118``, header to last data row."""
         last = self.rows[-1] if self.rows else self.top + self.height - 1
         used = [head.index for head in self.heads]
-        return f"{address(self.top, min(used))}:{address(last, max(used))}"
+        return f"{self.sheet.address(self.top, min(used))}:{self.sheet.address(last, max(used))}"
 
     def cells(self, index: int) -> list[Cell]:
         """The column's cells in the data rows, "" where a row is short."""
@@ -88,6 +88,32 @@ def find_tables(sheet: Sheet) -> Layout:
         layout.tables += _side_by_side(header)
     _outside(sheet, row, len(sheet.rows), layout)
     return layout
+
+
+def tables_under(sheet: Sheet, headers: list[tuple[int, int]]) -> Layout:
+    """The tables below header rows that a person has named: (first, last) rows from 0, in order; none beyond the sheet."""
+    _fill_merged(sheet)
+    layout = Layout([], [])
+    row = 0
+    for at, (first, last) in enumerate(headers):
+        if last >= len(sheet.rows) or not any(_line(sheet, line) for line in range(first, last + 1)):
+            continue
+        _outside(sheet, row, first, layout)
+        table = header_at(sheet, first, last)
+        row = _take_rows(sheet, table)
+        if at + 1 < len(headers):
+            row = min(row, headers[at + 1][0])
+            table.rows = [one for one in table.rows if one < row]
+        layout.title += [[note] for note in table.notes]
+        layout.tables += _side_by_side(table)
+    _outside(sheet, row, len(sheet.rows), layout)
+    return layout
+
+
+def header_at(sheet: Sheet, first: int, last: int) -> Table:
+    """The table whose header stands in these rows, from 0, with the units row below it and no data rows yet."""
+    height = last - first + 1
+    return _with_units_row(Table(sheet, first, height, None, _heads(sheet, first, height)))
 
 
 def _outside(sheet: Sheet, start: int, stop: int, layout: Layout) -> None:
@@ -156,7 +182,7 @@ def looks_numeric(cell: Cell) -> bool:
     return bool(text) and text[0].isdigit() and not any(letter.isalpha() for letter in text[:12])
 
 
-def _texty(row: list[Cell]) -> bool:
+def may_be_header(row: list[Cell]) -> bool:
     """True when a row may be part of a header: text, and next to no numbers."""
     words = numbers = 0
     for cell in row:
@@ -174,14 +200,14 @@ def _texty(row: list[Cell]) -> bool:
 def _next_header(sheet: Sheet, start: int) -> Table | None:
     """The next header at or below ``start``: the first row that scores, unless one of the three below scores better."""
     for row in range(start, len(sheet.rows)):
-        if not _texty(sheet.rows[row]):
+        if not may_be_header(sheet.rows[row]):
             continue
         found = _best_header(sheet, row)
         if found is None:
             continue
         score, table = found
         for later in range(row + 1, min(row + MAX_HEADER_ROWS, len(sheet.rows))):
-            if not _texty(sheet.rows[later]):
+            if not may_be_header(sheet.rows[later]):
                 break  # a row of numbers is data, and what follows it is no part of this header
             other = _best_header(sheet, later)
             if other is not None and other[0] >= score - 0.01:
@@ -195,7 +221,11 @@ def _best_header(sheet: Sheet, row: int) -> tuple[float, Table] | None:
     best: tuple[float, Table] | None = None
     for height in range(1, MAX_HEADER_ROWS + 1):
         last = row + height - 1
-        if last >= len(sheet.rows) or not _texty(sheet.rows[last]) or (height > 1 and _is_units(sheet.rows[last])):
+        if (
+            last >= len(sheet.rows)
+            or not may_be_header(sheet.rows[last])
+            or (height > 1 and _is_units(sheet.rows[last]))
+        ):
             break
         heads = _heads(sheet, row, height)
         score = _score(heads)
@@ -203,14 +233,19 @@ def _best_header(sheet: Sheet, row: int) -> tuple[float, Table] | None:
             best = score, Table(sheet, row, height, None, heads)
     if best is None:
         return None
-    table = best[1]
-    below = table.top + table.height
+    _with_units_row(best[1])
+    return best
+
+
+def _with_units_row(table: Table) -> Table:
+    """The table with the row of units below its header, when there is one."""
+    sheet, below = table.sheet, table.top + table.height
     if below < len(sheet.rows) and _is_units(sheet.rows[below]):
         table.unit_row = below
         table.heads = [
             Head(head.index, head.text, head.guess, _text_at(sheet, below, head.index)) for head in table.heads
         ]
-    return best
+    return table
 
 
 def _score(heads: list[Head]) -> float:
@@ -314,7 +349,7 @@ def _take_rows(sheet: Sheet, table: Table) -> int:
         line = sheet.rows[row]
         if _blank(line):
             continue
-        if _texty(line):
+        if may_be_header(line):
             if _repeats(line, header):
                 table.skipped.append((row, "repeats the header"))
                 continue

@@ -9,7 +9,6 @@ from labdata.intake.fields import CARBON, field_types
 from labdata.intake.findings import Findings, place_name
 from labdata.intake.reading import Cells
 from labdata.intake.tables import Table
-from labdata.intake.workbook import address
 
 # Fields that every laboratory reports in one unit; a header without a unit means that one.
 ONE_UNIT = frozenset({
@@ -36,6 +35,8 @@ def choose_units(table: Table, mapping: Mapping, cells: dict[int, Cells], findin
         column.factor = units.factor(column.unit, canonical) or column.factor
         if column.unit and column.factor == 1:
             column.unit = canonical  # % of a weight is wt%, mg/g of an index is mg/g TOC
+        if column.said:
+            column.confidence = 1.0
 
 
 def _shown_as_percent(table: Table, mapping: Mapping, cells: dict[int, Cells]) -> None:
@@ -44,6 +45,7 @@ def _shown_as_percent(table: Table, mapping: Mapping, cells: dict[int, Cells]) -
         if (
             column.index in table.sheet.percent
             and column.unit in {"", "%", "wt%"}
+            and not column.unit_said
             and cells[column.index].stored_numbers
         ):
             column.unit, column.unit_text = "fraction", "shown as percent"
@@ -62,7 +64,7 @@ def _known(table: Table, column: Column, findings: Findings) -> None:
     if column.unit == "mg/g" and column.field == "S3" and "hc" in units.fold(column.unit_text):
         findings.note(
             "unit_label",
-            f"Column {column.letter} «{column.header}» gives S3 in mg HC/g rock; S3 is carbon dioxide, so it is read as mg CO2/g rock.",
+            f"{column.place} «{column.header}» gives S3 in mg HC/g rock; S3 is carbon dioxide, so it is read as mg CO2/g rock.",
             sheet=table.sheet.name, cell=_header_cell(table, column), value=column.header, remedy="Nothing to do; tell the laboratory.",
         )  # fmt: skip
     if units.factor(column.unit, kind.unit) is None:
@@ -71,7 +73,7 @@ def _known(table: Table, column: Column, findings: Findings) -> None:
 
 def _not_convertible(table: Table, column: Column, findings: Findings, canonical: str) -> None:
     """An error, unless a person has answered which unit the numbers really have."""
-    message = f"Column {column.letter} «{column.header}» is in {column.unit}, which does not convert to {canonical}."
+    message = f"{column.place} «{column.header}» is in {column.unit}, which does not convert to {canonical}."
     options = _options(canonical)
     if _id(table, column) in findings.answers and (answer := _ask(table, column, findings, message, options)):
         column.unit = answer
@@ -150,7 +152,7 @@ def _ask_groups(table: Table, columns: list[Column], cells: dict[int, Cells], fi
                     table,
                     column,
                     findings,
-                    f"Column {column.letter} «{column.header}» gives {column.field} without a unit; its largest value is {top:g}.",
+                    f"{column.place} «{column.header}» gives {column.field} without a unit; its largest value is {top:g}.",
                     _options(kind.unit, column.field, top),
                 ),
             )
@@ -185,9 +187,7 @@ def _ask_group(table: Table, group: list[Column], name: str, options: list[str],
         if own[column.index] is None:
             _take(column, answer)
         else:
-            _take(
-                column, _ask(table, column, findings, f"Column {column.letter} «{column.header}» has no unit.", options)
-            )
+            _take(column, _ask(table, column, findings, f"{column.place} «{column.header}» has no unit.", options))
 
 
 def _take(column: Column, answer: str | None) -> None:
@@ -210,7 +210,7 @@ def _id(table: Table, column: Column) -> str:
 
 
 def _header_cell(table: Table, column: Column) -> str:
-    return address(table.top + table.height - 1, column.index)
+    return table.sheet.address(table.top + table.height - 1, column.index)
 
 
 def _options(canonical: str, field: str = "", top: float = 0.0) -> list[str]:

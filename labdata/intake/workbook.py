@@ -34,8 +34,9 @@ _OTHER_KINDS = (
 class Sheet:
     """One sheet. ``rows[i][j]`` is the cell in row i + 1 and column j + 1.
 
+    ``turned``: rows and columns are exchanged against the file, so that each sample has a row here too.
     ``merged``: inclusive (top, left, bottom, right) from 0; ``formats``: column -> most decimals that its number
-    formats show; ``percent``: columns shown as percent; ``faults``: address -> spreadsheet error or unstored formula.
+    formats show; ``percent``: columns shown as percent; ``row_formats`` and ``row_percent``: the same by row, in small sheets; ``faults``: address -> spreadsheet error or unstored formula.
     """
 
     name: str
@@ -45,6 +46,17 @@ class Sheet:
     percent: set[int] = field(default_factory=set)
     faults: dict[tuple[int, int], str] = field(default_factory=dict)
     comma_hint: str = ""
+    row_formats: dict[int, int] = field(default_factory=dict)
+    row_percent: set[int] = field(default_factory=set)
+    turned: bool = False
+
+    def address(self, row: int, column: int) -> str:
+        """The cell's address in the file."""
+        return address(column, row) if self.turned else address(row, column)
+
+    def row_name(self, line: int) -> str:
+        """``Row 12`` for a sample's line counted from 1; ``Column L`` where samples run along the columns."""
+        return column_name(line - 1) if self.turned else f"Row {line}"
 
 
 @dataclass
@@ -64,6 +76,16 @@ def letters(index: int) -> str:
         number, rest = divmod(number - 1, 26)
         name = chr(65 + rest) + name
     return name
+
+
+def line_letter(index: int, turned: bool = False) -> str:
+    """``F`` for column 5; ``6`` where it is a row of the file."""
+    return str(index + 1) if turned else letters(index)
+
+
+def column_name(index: int, turned: bool = False) -> str:
+    """``Column F`` for column 5; ``Row 6`` where it is a row of the file."""
+    return f"{'Row' if turned else 'Column'} {line_letter(index, turned)}"
 
 
 def address(row: int, column: int) -> str:

@@ -13,8 +13,10 @@ from labdata.models.samples import Consignment, CustodyEvent, DepthKind, Laborat
 from labdata.models.wells import (
     CasingShoe,
     CoreRun,
+    CurveQuantity,
     DatumKind,
     FormationTop,
+    LogCurve,
     MudInterval,
     MudKind,
     SurveyStation,
@@ -25,8 +27,8 @@ from labdata.models.wells import (
 
 __all__ = [
     "Analysis", "AnalysisRequest", "AnalysisRole", "Analyte", "ApiToken", "AuditEntry", "CasingShoe", "Consignment",
-    "CoreRun", "CustodyEvent", "DatumKind", "DepthKind", "FormationTop", "IdempotencyRecord", "Job", "JobEvent",
-    "JobState", "Laboratory", "LoginFailure", "Membership", "Method", "MudInterval", "MudKind", "Project", "Qualifier",
+    "CoreRun", "CurveQuantity", "CustodyEvent", "DatumKind", "DepthKind", "FormationTop", "IdempotencyRecord", "Job", "JobEvent",
+    "JobState", "Laboratory", "LogCurve", "LoginFailure", "Membership", "Method", "MudInterval", "MudKind", "Project", "Qualifier",
     "ReferenceMaterial", "Release", "RememberedLayout", "Report", "Result", "Role", "Sample", "SampleKind", "SourceColumn", "SourceFile",
     "SourceTable", "SurveyStation", "SweeperBeat", "TokenScope", "Upload", "Well", "WellAlias", "WellIdentifier",
 ]  # fmt: skip

@@ -1,5 +1,6 @@
 """Wells and what was recorded along them. Depths are metres measured depth below the well's datum."""
 
+import numpy as np
 from django.db import models
 
 from labdata.models.base import Choices
@@ -186,3 +187,50 @@ class MudInterval(models.Model):
 
     def __str__(self) -> str:
         return f"{self.get_kind_display()} mud {self.top_md_m}-{self.base_md_m} m"
+
+
+class CurveQuantity(Choices):
+    """What a gamma tool measures."""
+
+    GAMMA = "gamma", "gamma"
+    POTASSIUM = "potassium", "potassium by spectral gamma"
+    URANIUM = "uranium", "uranium by spectral gamma"
+    THORIUM = "thorium", "thorium by spectral gamma"
+
+
+class LogCurve(models.Model):
+    """One gamma curve logged along the well, as a wireline file gives it.
+
+    ``depths`` are metres and ``values`` are in ``unit``, both little-endian doubles of one length; NaN where the file
+    has its null value. Several files may log the same well.
+    """
+
+    well = models.ForeignKey(Well, on_delete=models.CASCADE, related_name="curves")
+    report = models.ForeignKey("labdata.Report", on_delete=models.PROTECT, related_name="curves")
+    mnemonic = models.CharField(max_length=40)
+    description = models.CharField(max_length=160, blank=True)
+    quantity = models.CharField(max_length=10, choices=CurveQuantity.choices)
+    unit = models.CharField(max_length=24, blank=True)
+    depth_unit_reported = models.CharField(max_length=10)
+    top_md_m = models.FloatField()
+    base_md_m = models.FloatField()
+    count = models.PositiveIntegerField()
+    depths = models.BinaryField()
+    values = models.BinaryField()
+
+    class Meta:
+        ordering = ["well", "report", "id"]
+        constraints = [
+            models.UniqueConstraint(fields=["report", "mnemonic"], name="log_curve_once_a_report"),
+            models.CheckConstraint(
+                condition=models.Q(base_md_m__gte=models.F("top_md_m"), count__gt=0), name="log_curve_downward"
+            ),
+            CurveQuantity.constraint("quantity", "log_curve_quantity_known"),
+        ]
+
+    def __str__(self) -> str:
+        return f"{self.mnemonic} of {self.well}"
+
+    def arrays(self) -> tuple[np.ndarray, np.ndarray]:
+        """(depths [m], values [``unit``]), NaN where the file has its null value."""
+        return np.frombuffer(self.depths, dtype="<f8"), np.frombuffer(self.values, dtype="<f8")

@@ -4,6 +4,7 @@ from collections.abc import Iterable
 from typing import Any
 
 from labdata import audit
+from labdata.intake import layouts
 from labdata.intake import services as intake
 from labdata.intake.fields import field_types
 from labdata.intake.prepared import Prepared, PreparedTable
@@ -133,8 +134,9 @@ class _Storing:
     ) -> list[Draft]:
         """Store the table and its columns; one draft per row and method with a value."""
         source = SourceTable.objects.create(
-            report=report, sheet=table.sheet[:120], cell_range=table.cell_range, kind=table.as_dict()["kind"]
-        )
+            report=report, sheet=table.sheet[:120], cell_range=table.cell_range, kind=table.as_dict()["kind"],
+            orientation=table.orientation,
+        )  # fmt: skip
         self._source_columns(source, table)
         drafts = []
         for at, method in filled(table):
@@ -228,6 +230,7 @@ class _Storing:
         upload.answer = prepared.entry(self.counts, report.number, upload.pk)
         upload.save(update_fields=["outcome", "report", "answer"])
         intake.settle_waiting(upload, report)
+        layouts.remember(prepared)
         audit.record(
             "report.imported", report, actor=upload.created_by, project=self.project,
             after={

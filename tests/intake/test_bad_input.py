@@ -70,7 +70,6 @@ def test_a_file_that_is_no_table_is_refused(content, message):
 TABLES = {
     "no header": ("1,2,3\n4,5,6\n", "no_table", "A1", "No table of results was found in «r.csv»; its first line reads «1 | 2 | 3»."),
     "a letter": ("Dear colleague,\nplease find\n", "no_table", "A1", "No table of results was found in «r.csv»; its first line reads «Dear colleague»."),
-    "on its side": ("Sample,A,B\nDepth (m),10,11\nTOC (wt%),1,2\nS2 (mg/g),3,4\n", "table_on_its_side", "A1", "In sheet «» of «r.csv» the samples run along the columns."),
     "no rows": (HEAD, "no_rows", "A1", "The table at A1:D1 has a header and no rows."),
     "no sample": ("TOC (wt%),S2 (mg/g)\n1,2\n", "no_sample_column", "A1", "The table at A1:B2 has neither a sample nor a depth column; its headers are «TOC (wt%)», «S2 (mg/g)»."),
     "wrong unit": ("Sample,Depth (m),Tmax (°F)\nA,10,800\n", "unit_not_convertible", "C1", "Column C «Tmax (°F)» is in degF, which does not convert to degC."),
