@@ -1,7 +1,7 @@
 """Words for sample kinds and for the roles of rows."""
 
 import re
-from functools import cache
+from functools import cache, lru_cache
 
 from labdata.intake.fields import synonyms
 from labdata.intake.headers import fold
@@ -28,15 +28,20 @@ def _role_words() -> list[tuple[str, str]]:
     return sorted(pairs, key=lambda pair: -len(pair[0]))
 
 
+@cache
+def _role_pattern() -> re.Pattern[str]:
+    """All words in one pattern, the longest first: a group each, in the order of ``_role_words``."""
+    ends = ((r"$" if role == "summary" or len(word) == 1 else r"(?=\s|\d|#|$)") for word, role in _role_words())
+    words = (f"({re.escape(word)}){end}" for (word, _), end in zip(_role_words(), ends, strict=True))
+    return re.compile("|".join(words))
+
+
+@lru_cache(maxsize=10_000)  # a column of kinds repeats a few words over many rows
 def role_of(text: str) -> str:
     """ "blank", "reference", "duplicate" or "summary" when the text is or begins with such a word, else ""."""
     plain = " ".join(re.sub(r"[_\-./:]+", " ", text.casefold()).split())
-    for word, role in _role_words():
-        if plain == word or (
-            role != "summary" and len(word) > 1 and re.match(rf"{re.escape(word)}(?:\s|\d|#|$)", plain)
-        ):
-            return role
-    return ""
+    found = _role_pattern().match(plain)
+    return _role_words()[found.lastindex - 1][1] if found and found.lastindex else ""
 
 
 def reference_name(label: str) -> str:

@@ -27,7 +27,7 @@ def take_ids(model: type[models.Model], count: int) -> list[int]:
 
 
 def insert(model: type[models.Model], columns: Sequence[str], rows: Iterable[tuple[Any, ...]]) -> None:
-    """Insert rows of database values; ``columns`` are column names, id among them.
+    """Insert rows of database values; ``columns`` are column names; without ``id`` the database numbers the rows.
 
     Raises IntegrityError when a row breaks a constraint. The transaction is the caller's.
     """

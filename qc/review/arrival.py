@@ -9,6 +9,7 @@ from uuid import UUID, uuid4
 from django.db.models import Max
 
 from labdata.models import Analysis, Result, Well
+from labdata.registry import bulk
 from qc.models import Decision, ReviewItem, ReviewSet, ReviewSetState, Verdict
 from qc.review import changes
 from qc.review.deciding import BATCH_SIZE
@@ -30,22 +31,24 @@ def take_in(landed: "Landed") -> None:
     opened where all are signed. Unchanged values keep their verdicts. A signed set whose seal no longer holds
     (a value changed, came or went) is re-opened. Laboratory controls belong to no well and are not decided on.
     """
-    arrived = [
-        analysis
+    wells = {
+        analysis: well
         for some in _chunks(landed.analysis_ids)
-        for analysis in Analysis.objects.filter(pk__in=some, sample__isnull=False).select_related("sample")
-    ]
-    places = _places(arrived, landed.replaced_analyses)
-    ReviewItem.objects.bulk_create(
-        [ReviewItem(review_set=places[analysis.pk], analysis=analysis) for analysis in arrived], batch_size=BATCH_SIZE
+        for analysis, well in Analysis.objects.filter(pk__in=some, sample__isnull=False).values_list(
+            "pk", "sample__well"
+        )
+    }
+    places = _places(wells, landed.replaced_analyses)
+    bulk.insert(
+        ReviewItem, ("review_set_id", "analysis_id"), ((place.pk, analysis) for analysis, place in places.items())
     )
     carried = _carry(landed.unchanged, places)
     for review_set, count in _touched(places, landed.withdrawn).items():
         _settle(review_set, count, carried.get(review_set.pk, 0), landed)
 
 
-def _places(arrived: Iterable[Analysis], replaced: dict[int, int]) -> dict[int, ReviewSet]:
-    """The set of each analysis that arrived."""
+def _places(wells: dict[int, int], replaced: dict[int, int]) -> dict[int, ReviewSet]:
+    """The set of each analysis that arrived; ``wells``: analysis id -> well id."""
     former = {
         item.analysis_id: item.review_set
         for some in _chunks(replaced.values())
@@ -54,17 +57,15 @@ def _places(arrived: Iterable[Analysis], replaced: dict[int, int]) -> dict[int, 
     shared = {review_set.pk: review_set for review_set in former.values()}
     open_sets: dict[int, ReviewSet] = {}
     places = {}
-    for analysis in arrived:
-        old = former.get(replaced.get(analysis.pk, 0))
+    for analysis, well in wells.items():
+        old = former.get(replaced.get(analysis, 0))
         if old is not None:
-            places[analysis.pk] = shared[old.pk]
+            places[analysis] = shared[old.pk]
             continue
-        assert analysis.sample is not None, "only analyses of samples arrive here"
-        well_id = analysis.sample.well_id
-        if well_id not in open_sets:
-            found = _open_set(well_id)
-            open_sets[well_id] = shared.setdefault(found.pk, found)
-        places[analysis.pk] = open_sets[well_id]
+        if well not in open_sets:
+            found = _open_set(well)
+            open_sets[well] = shared.setdefault(found.pk, found)
+        places[analysis] = open_sets[well]
     return places
 
 
