@@ -17,6 +17,7 @@ from qc.models import Flag, FlagAnswer, QcRun, QcRunWell, RuleSet
 from qc.rules import RULES
 from qc.rules.engine import parameters, run
 from qc.rules.evidence import Witness
+from qc.rules.panels import cell
 from qc.rules.rule import OUTCOMES, Answer, Finding
 from qc.rules.spans import num
 from qc.rules.table import Table
@@ -135,14 +136,13 @@ def _speaks_of(table: Table, finding: Finding) -> dict[str, Any]:
     """The analysis, result and value that a flag points at; none of them for a whole unit."""
     if finding.row is None:
         return {}
-    held = f"{finding.analyte}_id" in table.rows.columns and num(table.rows, finding.row, f"{finding.analyte}_id") >= 0
-    if not held:
+    held = cell(table, finding.row, finding.analyte)
+    if held is None:
         return {"analysis_id": int(num(table.rows, finding.row, "analysis"))}
-    value = num(table.rows, finding.row, finding.analyte)
-    holder = int(num(table.rows, finding.row, f"{finding.analyte}_row"))
+    value = float(held[""])
     return {
-        "analysis_id": int(num(table.rows, holder, "analysis")),
-        "result_id": int(num(table.rows, finding.row, f"{finding.analyte}_id")),
+        "analysis_id": int(num(table.rows, int(held["_row"]), "analysis")),
+        "result_id": int(held["_id"]),
         "value": None if value != value else value,  # noqa: PLR0124 - NaN
     }
 

@@ -11,12 +11,41 @@ import numpy as np
 import pandas as pd
 from django.db.models import QuerySet
 
-from labdata.models import Analysis, Analyte, CoreRun, FormationTop, MudInterval, Result, SourceColumn, Well
+from labdata.models import (
+    Analysis,
+    Analyte,
+    CasingShoe,
+    CoreRun,
+    FormationTop,
+    LogCurve,
+    MudInterval,
+    Result,
+    SourceColumn,
+    SurveyStation,
+    Well,
+)
+from qc.controls import controls
 from qc.models import Decision, Verdict
 from qc.rules.decimals import batch_of, half_units
+from qc.rules.panels import METHODS
 from qc.rules.spans import num
 from qc.rules.strat_top_mismatch import current, formations, plain
-from qc.rules.table import ANALYTES, CORES, IDENTITY, MUDS, TOPS, VALUE_DEFAULTS, Table, frame, no_things
+from qc.rules.table import (
+    ANALYTES,
+    CORES,
+    CURVES,
+    IDENTITY,
+    MUDS,
+    SHOES,
+    SURVEY,
+    TOPS,
+    VALUE_DEFAULTS,
+    WELL_COLUMNS,
+    WELL_TEXTS,
+    Table,
+    frame,
+    no_things,
+)
 
 CHUNK = 20_000
 ANALYSIS_FIELDS = {
@@ -46,22 +75,30 @@ def read(wells: Sequence[Well]) -> Table:
     tops = _along(FormationTop.objects.filter(well__in=place), ("well_id", "name", "top_md_m", "version"), TOPS, place)
     columns: dict[str, object] = {str(name): rows[name].to_numpy() for name in rows.columns if name in IDENTITY}
     columns["unit"] = _units(rows, tops)
-    held = _results(place, rows)
+    codes = dict(Analyte.objects.filter(code__in=ANALYTES).values_list("id", "code"))
+    held = _results(place, rows, results_of(place).filter(analyte__in=list(codes)), codes)
     for analyte in ANALYTES:
         columns |= _spread(held[held["code"] == analyte], analyte, len(rows))
     made = frame(columns, len(rows))
     _join(made)
     return Table(
         rows=made,
+        panels=_panels(place, rows),
+        controls=controls(wells, rows),
         wells=_wells(wells),
         tops=tops,
         cores=_along(
             CoreRun.objects.filter(well__in=place),
-            ("well_id", "number", "top_md_m", "base_md_m", "shift_to_log_m"), CORES, place,
+            ("well_id", "number", "top_md_m", "base_md_m", "shift_to_log_m", "recovered_m"), CORES, place,
         ),
         muds=_along(
             MudInterval.objects.filter(well__in=place), ("well_id", "top_md_m", "base_md_m", "kind", "additives"), MUDS, place
         ),
+        shoes=_along(CasingShoe.objects.filter(well__in=place), ("well_id", "md_m"), SHOES, place),
+        survey=_along(
+            SurveyStation.objects.filter(well__in=place), ("well_id", "md_m", "inclination_deg", "azimuth_deg"), SURVEY, place
+        ),
+        curves=_curves(place),
     )  # fmt: skip
 
 
@@ -114,10 +151,29 @@ def _units(rows: pd.DataFrame, tops: pd.DataFrame) -> np.ndarray:
     return made
 
 
-def _results(place: dict[int, int], rows: pd.DataFrame) -> pd.DataFrame:
+def _panels(place: dict[int, int], rows: pd.DataFrame) -> dict[str, pd.DataFrame]:
+    """Method -> its values, for the methods that have panels and were measured."""
+    present = [method for method in METHODS if (rows["method"] == method).any()]
+    if not present:
+        return {}
+    codes = dict(Analyte.objects.values_list("id", "code"))
+    held = _results(place, rows, results_of(place).filter(analysis__method__code__in=present), codes)
+    made = {}
+    for method in present:
+        index = rows.index[rows["method"] == method]
+        own = held[held["row"].isin(index)]
+        columns: dict[str, object] = {}
+        for analyte in sorted(set(own["code"])):
+            columns |= _spread(own[own["code"] == analyte], analyte, len(rows))
+        made[method] = pd.DataFrame(columns, index=rows.index).loc[index]
+    return made
+
+
+def _results(
+    place: dict[int, int], rows: pd.DataFrame, results: QuerySet[Result], codes: dict[int, str]
+) -> pd.DataFrame:
     """One row a result that rules read: place of its analysis, code, value and where it stood, half-unit, rejected or not."""
-    codes = dict(Analyte.objects.filter(code__in=ANALYTES).values_list("id", "code"))
-    held = _fetch(results_of(place).filter(analyte__in=list(codes)), RESULT_FIELDS)
+    held = _fetch(results, RESULT_FIELDS)
     held["code"] = held["analyte"].map(codes)
     held["row"] = held["analysis"].map(pd.Series(rows.index, index=rows["analysis"]))
     held["value"] = held["value"].astype(float)
@@ -171,10 +227,21 @@ def _join(rows: pd.DataFrame) -> None:
 def _wells(wells: Sequence[Well]) -> pd.DataFrame:
     facts = {
         "name": [well.name for well in wells], "uwi": [well.uwi for well in wells],
+        "datum_kind": [well.datum_kind for well in wells],
         "td_m": [well.td_md_m for well in wells], "datum_m": [well.datum_elevation_m for well in wells],
         "ground_m": [well.ground_elevation_m for well in wells], "water_m": [well.water_depth_m for well in wells],
     }  # fmt: skip
-    return pd.DataFrame(facts).astype(dict.fromkeys(["td_m", "datum_m", "ground_m", "water_m"], float))
+    return pd.DataFrame(facts).astype(dict.fromkeys(WELL_COLUMNS[len(WELL_TEXTS) :], float))
+
+
+def _curves(place: dict[int, int]) -> pd.DataFrame:
+    """Gamma curves of the wells, by name."""
+    held = LogCurve.objects.filter(well__in=place).order_by("well_id", "mnemonic", "report__number", "id")
+    rows = [
+        (place[curve.well_id], curve.mnemonic, curve.quantity, *curve.arrays())
+        for curve in held.iterator(chunk_size=50)
+    ]
+    return pd.DataFrame(rows, columns=list(CURVES)) if rows else no_things(*CURVES)
 
 
 def _along(

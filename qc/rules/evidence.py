@@ -7,8 +7,10 @@ from typing import Any
 
 import numpy as np
 
+from qc.rules.panels import cell as cell_of
+from qc.rules.panels import unit_of
 from qc.rules.rule import Finding, Rule
-from qc.rules.table import UNITS, Table
+from qc.rules.table import UNITS, VALUE_DEFAULTS, Table
 from qc.rules.thresholds import in_words
 
 NEIGHBOURS = 3  # above and below
@@ -32,6 +34,7 @@ class Witness:
     def __init__(self, table: Table) -> None:
         self.table = table
         self._columns = {name: table.rows[name].to_numpy() for name in table.rows.columns}
+        self._found: dict[tuple[int, str], dict[str, Any] | None] = {}
         self._order: dict[tuple[int, str], list[int]] = {}
         self._place: dict[int, int] = {}
         deep = table.rows[table.rows["top_m"].notna()].sort_values(["well", "method", "top_m"], kind="stable")
@@ -74,19 +77,30 @@ class Witness:
             if self._has(row, name)
         ]
 
+    def _cell(self, row: int, analyte: str) -> dict[str, Any] | None:
+        """Suffix -> value of an analyte of the row; None where it has none."""
+        held = self._columns.get(f"{analyte}_id")
+        if held is not None and held[row] >= 0:
+            return {suffix: self._columns[f"{analyte}{suffix}"][row] for suffix in VALUE_DEFAULTS}
+        if not self.table.panels:
+            return None
+        if (row, analyte) not in self._found:
+            self._found[row, analyte] = cell_of(self.table, row, analyte)
+        return self._found[row, analyte]
+
     def _has(self, row: int, analyte: str) -> bool:
-        return bool(self._columns[f"{analyte}_id"][row] >= 0)
+        return self._cell(row, analyte) is not None
 
     def _input(self, row: int, analyte: str, tell: bool) -> dict[str, Any]:
-        column = self._columns
-        holder, place = int(column[f"{analyte}_row"][row]), int(column[f"{analyte}_col"][row])
+        column, held = self._columns, self._cell(row, analyte) or {}
+        holder, place = int(held["_row"]), int(held["_col"])
         line = int(column["line"][holder])
         cell = cell_address(line, place) if column["across"][holder] else cell_address(place, line)
         made = {
-            "analyte": analyte, "value": column[analyte][row], "qualifier": column[f"{analyte}_q"][row],
-            "unit": UNITS[analyte], "decimals": column[f"{analyte}_d"][row], "text": column[f"{analyte}_text"][row],
+            "analyte": analyte, "value": held[""], "qualifier": held["_q"], "unit": UNITS.get(analyte) or unit_of(analyte),
+            "decimals": held["_d"], "text": held["_text"],
             "file": column["file"][holder], "sheet": column["sheet"][holder], "cell": cell if place >= 0 else "",
-            "result": column[f"{analyte}_id"][row],
+            "result": held["_id"],
         }  # fmt: skip
         return {**made, "sample": self.table.name(row)} if tell else made
 
@@ -115,7 +129,7 @@ class Witness:
         shown = finding.inputs[:3]
         return [
             {"sample": column["label"][other], "top_m": column["top_m"][other]}
-            | {name: f"{column[f'{name}_q'][other]}{column[name][other]:g}" for name in shown if self._has(other, name)}
+            | {name: f"{held['_q']}{held['']:g}" for name in shown if (held := self._cell(other, name))}
             for other in near
         ]
 
@@ -126,16 +140,14 @@ class Witness:
             rule.id, rule.version, finding.analyte, finding.severity,
             sorted((name, entry["value"]) for name, entry in parameters.items()),
             [self._identity(row, finding) for row in rows],
-            finding.limit if rule.family == "depth" else None,
+            finding.limit if rule.family == "depth" else finding.more.get("control"),
         ]  # fmt: skip
         text = json.dumps(plain(said), sort_keys=True, separators=(",", ":"), ensure_ascii=False)
         return hashlib.sha256(text.encode()).hexdigest()
 
     def _identity(self, row: int, finding: Finding) -> list[Any]:
         column, well = self._columns, self.table.wells.loc[self._columns["well"][row]]
-        values = [
-            [name, column[f"{name}_q"][row], column[name][row]] for name in finding.inputs if self._has(row, name)
-        ]
+        values = [[name, held["_q"], held[""]] for name in finding.inputs if (held := self._cell(row, name))]
         sample = [
             column[name][row] for name in ("match_key", "label", "kind", "top_m", "base_m", "method", "replicate")
         ]

@@ -11,9 +11,28 @@ from typing import Any
 import numpy as np
 import pandas as pd
 
+from labdata.intake.fields import catalogue
 from qc.rules.decimals import batch_of, half_units
-from qc.rules.table import ANALYTES, CORES, IDENTITY, MUDS, TOPS, WELL_COLUMNS, Table, frame, no_things
+from qc.rules.panels import METHODS
+from qc.rules.table import (
+    ANALYTES,
+    CORES,
+    CURVES,
+    IDENTITY,
+    MUDS,
+    SHOES,
+    SURVEY,
+    TOPS,
+    WELL_COLUMNS,
+    WELL_TEXTS,
+    Table,
+    controls_of,
+    frame,
+    no_things,
+)
 
+PLACES = 1000  # columns a row has room for
+PANEL_PLACE = 500  # columns of panels stand behind those of the rows
 _CELL = re.compile(r"^\s*([<>~]?)\s*([-+]?(?:\d+\.?(\d*)|\.(\d+)))?\s*$")
 
 
@@ -37,8 +56,15 @@ def table_of(
     tops: Sequence[Sequence[Any]] = (),
     cores: Sequence[Sequence[Any]] = (),
     muds: Sequence[Sequence[Any]] = (),
+    shoes: Sequence[Sequence[Any]] = (),
+    survey: Sequence[Sequence[Any]] = (),
+    curves: Sequence[Sequence[Any]] = (),
+    controls: Sequence[Mapping[str, Any]] = (),
 ) -> Table:
-    """The table of the records; ``wells`` in the order of their numbers, the others as rows of ``TOPS``, ``CORES``, ``MUDS``."""
+    """The table of the records; ``wells`` in the order of their numbers, the others as rows of ``TOPS``, ``CORES`` and so on.
+
+    What a row leaves out at its end is unknown.
+    """
     listed = [dict(record) for record in records]
     columns: dict[str, object] = {
         name: [record.get(name, default) for record in listed] for name, default in IDENTITY.items()
@@ -52,13 +78,34 @@ def table_of(
     known = pd.DataFrame([dict(well) for well in wells], index=range(len(wells)), columns=list(WELL_COLUMNS)).reindex(
         range(count)
     )
-    known["name"], known["uwi"] = known["name"].fillna("Quill 1"), known["uwi"].fillna("")
-    known = known.astype(dict.fromkeys(WELL_COLUMNS[2:], float))
-    return Table(frame(columns, len(listed)), known, _things(tops, TOPS), _things(cores, CORES), _things(muds, MUDS))
+    known["name"] = known["name"].fillna("Quill 1")
+    known[list(WELL_TEXTS)] = known[list(WELL_TEXTS)].fillna("")
+    known = known.astype(dict.fromkeys(WELL_COLUMNS[len(WELL_TEXTS) :], float))
+    things = {"tops": (tops, TOPS), "cores": (cores, CORES), "muds": (muds, MUDS), "shoes": (shoes, SHOES),
+              "survey": (survey, SURVEY), "curves": (curves, CURVES)}  # fmt: skip
+    around = {name: _things(*given) for name, given in things.items()}
+    held = {"panels": _panels(listed), "controls": controls_of(list(controls))}
+    return Table(frame(columns, len(listed)), known, **around, **held)
+
+
+def _panels(records: list[dict[str, Any]]) -> dict[str, pd.DataFrame]:
+    """Panels of the methods that have them, from the records of those methods."""
+    made, known = {}, catalogue()["analytes"]
+    for method in METHODS:
+        index = [row for row, record in enumerate(records) if record.get("method") == method]
+        own = [record if record.get("method") == method else {} for record in records]
+        columns: dict[str, object] = {}
+        for place, code in enumerate(sorted({code for row in index for code in records[row] if code in known})):
+            columns |= _analyte(own, code, PANEL_PLACE + place)
+        if index:
+            made[method] = pd.DataFrame(columns, index=range(len(records))).loc[index]
+    return made
 
 
 def _things(rows: Sequence[Sequence[Any]], columns: tuple[str, ...]) -> pd.DataFrame:
-    return pd.DataFrame([list(row) for row in rows], columns=list(columns)) if rows else no_things(*columns)
+    if not rows:
+        return no_things(*columns)
+    return pd.DataFrame([[*row, *[None] * (len(columns) - len(row))] for row in rows], columns=list(columns))
 
 
 def _analyte(records: list[dict[str, Any]], analyte: str, place: int) -> dict[str, object]:
@@ -80,7 +127,7 @@ def _analyte(records: list[dict[str, Any]], analyte: str, place: int) -> dict[st
     rejected = [analyte in record.get("rejected", ()) for record in records]
     return {
         analyte: np.array(value, dtype=float), f"{analyte}_q": qualifier, f"{analyte}_d": decimals, f"{analyte}_h": half,
-        f"{analyte}_id": np.where(present, rows * len(ANALYTES) + place, -1), f"{analyte}_text": text,
+        f"{analyte}_id": np.where(present, rows * PLACES + place, -1), f"{analyte}_text": text,
         f"{analyte}_col": np.where(present, place + 1, -1), f"{analyte}_row": np.where(present, rows, -1),
         f"{analyte}_rej": np.array(rejected, dtype=bool),
     }  # fmt: skip

@@ -7,12 +7,13 @@ row of the analysis that holds it (a value may come from another analysis of the
 person rejected it.
 """
 
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field, replace
 
 import numpy as np
 import pandas as pd
 
+from qc.rules.panels import SUFFIXES, gather
 from qc.rules.rule import Answer
 from qc.rules.spans import num, word
 
@@ -22,31 +23,30 @@ UNITS = {
     "GP": "mg/g", "PC": "wt%", "RC": "wt%", "RO": "%", "RO_SD": "%", "RO_N": "", "RO_MIN": "%", "RO_MAX": "%",
     "ALGINITE": "%", "SIDERITE": "wt%", "ILLITE": "wt%",
     "TOC_CARBON": "wt%",  # TOC of the separate carbon analysis of the same sample
+    "ALIQUOT": "mg",  # mass pyrolysed
+    "GR": "API",  # of core
 }  # fmt: skip
 ANALYTES = tuple(UNITS)
 CORE_KINDS = frozenset({"core", "plug", "sidewall"})
 NOT_ROCK = frozenset({"fluid", "additive"})
-VALUE_DEFAULTS: dict[str, tuple[object, str]] = {
-    "": (np.nan, "float64"), "_q": ("", "object"), "_d": (0, "int64"), "_h": (np.nan, "float64"),
-    "_id": (-1, "int64"), "_text": ("", "object"), "_col": (-1, "int64"), "_row": (-1, "int64"),
-    "_rej": (False, "bool"),
-}  # fmt: skip
+VALUE_DEFAULTS = dict(SUFFIXES)
 IDENTITY: dict[str, object] = {
     "well": 0, "analysis": -1, "sample": -1, "label": "", "kind": "unknown", "formation": "", "unit": "",
     "top_m": np.nan, "base_m": np.nan, "top_text": "", "base_text": "", "depth_unit": "", "depth_kind": "",
     "method": "pyrolysis", "replicate": 1, "replicate_stated": False, "role": "sample", "lab_number": "", "remark": "",
     "laboratory": "", "report": "", "table": 0, "line": 0, "file": "", "sheet": "", "across": False, "match_key": "",
 }  # fmt: skip
-WELL_COLUMNS = ("name", "uwi", "td_m", "datum_m", "ground_m", "water_m")
+WELL_COLUMNS = ("name", "uwi", "datum_kind", "td_m", "datum_m", "ground_m", "water_m")
+WELL_TEXTS = WELL_COLUMNS[:3]
 
 
 @dataclass(frozen=True)
 class Table:
     """Analyses of one or more wells, and what is known along the wells.
 
-    ``rows`` as the module says, indexed 0..n-1; ``wells`` indexed by ``rows.well`` with name, uwi, td_m, datum_m,
-    ground_m, water_m; ``tops`` (well, name, top_m, version), ``cores`` (well, number, top_m, base_m, shift_m),
-    ``muds`` (well, top_m, base_m, kind, additives). ``answers`` are those of the rules that ran before.
+    ``rows`` as the module says, indexed 0..n-1; ``wells`` indexed by ``rows.well`` with name, uwi, datum_kind, td_m,
+    datum_m, ground_m, water_m; the others have the columns named below (``TOPS`` and so on). A curve's ``depths`` [m]
+    and ``values`` are arrays. ``answers`` are those of the rules that ran before.
     """
 
     rows: pd.DataFrame
@@ -54,11 +54,20 @@ class Table:
     tops: pd.DataFrame
     cores: pd.DataFrame
     muds: pd.DataFrame
+    shoes: pd.DataFrame = field(default_factory=lambda: no_things(*SHOES))
+    survey: pd.DataFrame = field(default_factory=lambda: no_things(*SURVEY))
+    curves: pd.DataFrame = field(default_factory=lambda: no_things(*CURVES))
     answers: Mapping[str, Answer] = field(default_factory=dict)
+    panels: Mapping[str, pd.DataFrame] = field(default_factory=dict)
+    controls: pd.DataFrame = field(default_factory=lambda: no_controls())
 
     def of(self, *methods: str) -> pd.DataFrame:
         """Rows of these methods, index kept."""
         return self.rows[self.rows["method"].isin(methods)]
+
+    def panel(self, method: str, *analytes: str) -> pd.DataFrame:
+        """Rows of a method that has a panel, with these analytes as measured by it or on the same sample; else empty."""
+        return gather(self, method, analytes)
 
     def samples(self) -> pd.DataFrame:
         """The first row of each sample: for what is true of the sample whatever was measured on it."""
@@ -90,7 +99,35 @@ def no_things(*columns: str) -> pd.DataFrame:
     return pd.DataFrame({name: pd.Series(dtype=object if name in _TEXTS else float) for name in columns})
 
 
-_TEXTS = frozenset({"name", "version", "kind", "additives"})
+_TEXTS = frozenset({"name", "version", "kind", "additives", "quantity", "depths", "values"})
 TOPS = ("well", "name", "top_m", "version")
-CORES = ("well", "number", "top_m", "base_m", "shift_m")
+CORES = ("well", "number", "top_m", "base_m", "shift_m", "recovered_m")
 MUDS = ("well", "top_m", "base_m", "kind", "additives")
+SHOES = ("well", "md_m")
+SURVEY = ("well", "md_m", "inclination_deg", "azimuth_deg")
+CURVES = ("well", "name", "quantity", "depths", "values")
+CONTROLS = (
+    "project", "table", "line", "laboratory", "method", "analyte", "role", "material", "lot", "report", "date", "value",
+    "q", "certified", "uncertainty", "result", "text", "column", "file", "sheet", "across",
+)  # fmt: skip
+_CONTROL_NUMBERS = frozenset({"value", "certified", "uncertainty"})
+_CONTROL_COUNTS = frozenset({"project", "table", "line", "result", "column"})
+
+
+def no_controls() -> pd.DataFrame:
+    """An empty frame of controls."""
+    return controls_of([])
+
+
+def controls_of(records: Sequence[Mapping[str, object]]) -> pd.DataFrame:
+    """Controls from plain records: in order of laboratory, method, analyte, material, lot, date, report, table and line.
+
+    ``table`` numbers source tables as ``rows.table`` does; -1 for a table that holds none of the rows at hand.
+    """
+    defaults: dict[str, object] = {
+        name: np.nan if name in _CONTROL_NUMBERS else -1 if name in _CONTROL_COUNTS else "" for name in CONTROLS
+    }
+    made = pd.DataFrame([{**defaults, "across": False, **record} for record in records], columns=list(CONTROLS))
+    kinds = dict.fromkeys(_CONTROL_NUMBERS, "float64") | dict.fromkeys(_CONTROL_COUNTS, "int64")
+    order = ["laboratory", "method", "analyte", "material", "lot", "date", "report", "table", "line"]
+    return made.astype(kinds).sort_values(order, kind="stable").reset_index(drop=True)
