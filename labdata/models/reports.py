@@ -180,9 +180,7 @@ class RememberedLayout(models.Model):
     class Meta:
         ordering = ["laboratory_name", "-at"]
         constraints = [
-            models.UniqueConstraint(
-                fields=["project", "laboratory_name", "fingerprint"], name="remembered_layout_once"
-            )
+            models.UniqueConstraint(fields=["project", "laboratory_name", "fingerprint"], name="remembered_layout_once")
         ]
 
     def __str__(self) -> str:

@@ -70,7 +70,7 @@ def preview(file: SourceFile, table: dict[str, Any], findings: list[dict[str, An
 
     ``table`` and ``findings`` as the outside contract has them. None when there is no such sheet or range.
     """
-    corners = _corners(table["range"])
+    corners = corners_of(table["range"])
     sheet = _sheet(file, table["sheet"])
     if corners is None or sheet is None:
         return None
@@ -95,7 +95,7 @@ def _finding_marks(sheet: str, findings: list[dict[str, Any]]) -> dict[tuple[int
     """Cell -> the mark of the gravest finding about it."""
     marks: dict[tuple[int, int], str] = {}
     for one in findings:
-        corner = _corners(one["cell"]) if one["cell"] and one["sheet"] in {"", sheet} else None
+        corner = corners_of(one["cell"]) if one["cell"] and one["sheet"] in {"", sheet} else None
         if corner:
             marks.setdefault(corner[0], f"found-{one['level']}")
     return marks
@@ -149,11 +149,11 @@ def _window(centre: int, head: int, end: int) -> list[int]:
 
 def _corner(table: SourceTable) -> tuple[int, int]:
     """Row and column, from 1, of the upper left cell of the table's range."""
-    corners = _corners(table.cell_range)
+    corners = corners_of(table.cell_range)
     return corners[0] if corners else (1, 1)
 
 
-def _corners(cell_range: str) -> tuple[tuple[int, int], tuple[int, int]] | None:
+def corners_of(cell_range: str) -> tuple[tuple[int, int], tuple[int, int]] | None:
     """``B5:C9`` as ((5, 2), (9, 3)), a single cell as itself twice; None for what is no range."""
     found = re.fullmatch(r"([A-Z]{1,3})(\d{1,7})(?::([A-Z]{1,3})(\d{1,7}))?", cell_range)
     if not found:

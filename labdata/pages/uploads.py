@@ -8,10 +8,12 @@ from django.core.files.storage import default_storage
 from django.core.files.uploadedfile import UploadedFile
 from django.http import FileResponse, HttpRequest, HttpResponse
 from django.shortcuts import redirect, render
+from django.urls import reverse
 from django.views.decorators.http import require_http_methods, require_POST, require_safe
 
 from labdata.access import Action, visible
 from labdata.errors import KerogateError, NotFound
+from labdata.intake import templates_out
 from labdata.intake.services import answer_questions, receive
 from labdata.models import Project, SourceFile, Upload
 from labdata.pages.common import find, open_project, page_of, person
@@ -50,6 +52,10 @@ class UploadForm(AgainForm):
         help_text="Tables as the laboratory sent them: .xlsx, .xlsm, .xls, .csv, .tsv or .txt. "
         "Drop them here or choose them; what they hold is decided by content, not by name.",
     )
+    look = forms.BooleanField(
+        label="Look before storing", required=False,
+        help_text="The file is read and waits on the mapping desk until you say «store it».",
+    )  # fmt: skip
 
 
 @require_http_methods(["GET", "POST"])
@@ -70,6 +76,7 @@ def uploads(request: HttpRequest, slug: str) -> HttpResponse:
     context = {
         "form": form, "page": page_of(request, rows), "outcome": outcome, "outcomes": Upload.Outcome.choices,
         "labs": project.laboratories.values_list("name", flat=True), "wells": project.wells.values_list("name", flat=True),
+        "templates": templates_out.methods(),
     }  # fmt: skip
     return render(request, "uploads/uploads.html", context)
 
@@ -90,11 +97,12 @@ def _receive_all(request: HttpRequest, project: Project, form: UploadForm) -> li
 def _receive(request: HttpRequest, project: Project, file: UploadedFile, asked: dict[str, Any]) -> Upload:
     return receive(
         project=project, name=file.name or "unnamed", content=file.read(), user=person(request),
-        lab=asked["lab"], well=asked["well"], create_wells=asked["create_wells"],
+        lab=asked["lab"], well=asked["well"], create_wells=asked["create_wells"], look=asked["look"],
     )  # fmt: skip
 
 
-def _upload(request: HttpRequest, project: Project, pk: int) -> Upload:
+def find_upload(request: HttpRequest, project: Project, pk: int) -> Upload:
+    """The upload with what its pages show of it. Raises NotFound."""
     rows = visible(request.user, Upload.objects.filter(project=project))
     return find(
         rows.select_related("source_file", "report__supersedes", "job", "created_by", "project"), "upload", pk=pk
@@ -105,13 +113,13 @@ def _upload(request: HttpRequest, project: Project, pk: int) -> Upload:
 def upload(request: HttpRequest, slug: str, pk: int) -> HttpResponse:
     """The mapping desk: what was recognised, what was found, and what is asked."""
     project = open_project(request, slug)
-    return render(request, "uploads/upload.html", _desk(_upload(request, project, pk)))
+    return render(request, "uploads/upload.html", _desk(find_upload(request, project, pk)))
 
 
 def _desk(at_hand: Upload) -> dict[str, Any]:
     findings, counts = at_hand.answer.get("findings", []), at_hand.answer.get("counts", {})
     amends = at_hand.report is not None and at_hand.report.supersedes_id is not None
-    busy = _busy(at_hand)
+    busy = is_busy(at_hand)
     return {
         "upload": at_hand,
         "tables": at_hand.answer.get("tables", []),
@@ -137,25 +145,28 @@ def _grouped(findings: list[dict[str, Any]], level: str) -> list[dict[str, Any]]
     return list(rows.values())
 
 
-def _busy(at_hand: Upload) -> bool:
+def is_busy(at_hand: Upload) -> bool:
     """The file is being read now, for the first time or again after answers."""
     return at_hand.job is not None and not at_hand.job.settled
 
 
 @require_safe
 def upload_progress(request: HttpRequest, slug: str, pk: int) -> HttpResponse:
-    """How far the reading is, for polling; the page is loaded again once it has ended."""
-    at_hand = _upload(request, open_project(request, slug), pk)
+    """How far the reading is, for polling; then the page again, or the desk for a file that one wants to look at first."""
+    at_hand = find_upload(request, open_project(request, slug), pk)
     response = render(request, "jobs/_progress.html", {"job": at_hand.job})
-    if not _busy(at_hand):
-        response["HX-Refresh"] = "true"
+    if not is_busy(at_hand):
+        if at_hand.options.get("look") and at_hand.outcome in READ_AGAIN and "confirm" not in at_hand.answers:
+            response["HX-Redirect"] = reverse("desk", args=[slug, pk])
+        else:
+            response["HX-Refresh"] = "true"
     return response
 
 
 @require_safe
 def upload_sheet(request: HttpRequest, slug: str, pk: int, table: int) -> HttpResponse:
     """A recognised table as it stands in the sheet; loaded after the page, since the file is read once more."""
-    at_hand = _upload(request, open_project(request, slug), pk)
+    at_hand = find_upload(request, open_project(request, slug), pk)
     tables = at_hand.answer.get("tables", [])
     if table >= len(tables):
         raise NotFound(f"No table {table + 1} was found in this file.", remedy="Load the page again.")
@@ -171,7 +182,7 @@ def upload_sheet(request: HttpRequest, slug: str, pk: int, table: int) -> HttpRe
 @require_POST
 def upload_answer(request: HttpRequest, slug: str, pk: int) -> HttpResponse:
     """Take the answers given; the file is read again with them."""
-    at_hand = _upload(request, open_project(request, slug, Action.UPLOAD), pk)
+    at_hand = find_upload(request, open_project(request, slug, Action.UPLOAD), pk)
     findings = at_hand.answer.get("findings", [])
     asked = [one["id"] for one in findings if one["level"] == "question" or one["id"].startswith(LEAVE_BLANK)]
     answers = {name: request.POST.get(f"answer:{name}", "").strip() for name in asked}
@@ -188,7 +199,7 @@ def upload_answer(request: HttpRequest, slug: str, pk: int) -> HttpResponse:
 def upload_again(request: HttpRequest, slug: str, pk: int) -> HttpResponse:
     """Bring the same bytes in once more, with other particulars; the answers given so far go with them."""
     project = open_project(request, slug, Action.UPLOAD)
-    before = _upload(request, project, pk)
+    before = find_upload(request, project, pk)
     form = AgainForm(request.POST)
     form.full_clean()
     with default_storage.open(before.source_file.stored_as) as stored:

@@ -41,6 +41,13 @@ PAGES = {
     "upload_sheet": Page(names=("upload", "table")),
     "upload_again": Page(Action.UPLOAD, "post", ("upload",), ok=302),
     "upload_answer": Page(Action.UPLOAD, "post", ("upload",), ok=302),
+    "desk": Page(names=("landed",)),
+    "desk_look": Page(Action.UPLOAD, "post", ("landed",)),
+    "desk_store": Page(Action.UPLOAD, "post", ("landed",), ok=302),
+    "upload_withdraw": Page(Action.UPLOAD, "post", ("landed",), ok=409),  # what is in cannot be withdrawn
+    "layouts": VIEW,
+    "layout_forget": Page(Action.UPLOAD, "post", ("layout",), ok=404),  # no such layout
+    "template_out": Page(names=("method",)),
     "jobs": VIEW,
     "job": Page(names=("job",)),
     "job_progress": Page(names=("job",)),
@@ -90,7 +97,7 @@ def address(name: str, page: Page, made: World) -> str:
         "well": made.well.pk, "kind": "casing", "thing": made.well.casing_shoes.get().pk,
         "sample": made.result.analysis.sample_id, "result": made.result.pk, "upload": made.upload.pk,
         "file": made.upload.source_file_id, "job": made.job.pk, "run": made.run.pk, "rule": "s2_floor_for_tmax", "table": 0,
-        "release": made.release.number,
+        "release": made.release.number, "landed": made.landed.pk, "layout": 999_999, "method": "carbon",
     }  # fmt: skip
     return reverse(name, args=[made.slug, *(values[part] for part in page.names)])
 

@@ -68,6 +68,10 @@ class World:
     def slug(self) -> str:
         return self.scene.project.slug
 
+    @property
+    def landed(self) -> Upload:
+        return Upload.objects.get(project=self.scene.project, outcome="imported")
+
     def person(self, role: str):
         return self.scene.person(role)
 

@@ -1,0 +1,196 @@
+"""The mapping desk: a file's sheets with what was recognised, corrections and their outcome at once, storing or walking away."""
+
+from typing import Any
+
+from django.contrib import messages
+from django.core.files.storage import default_storage
+from django.http import HttpRequest, HttpResponse
+from django.shortcuts import redirect, render
+from django.views.decorators.http import require_POST, require_safe
+
+from labdata.access import Action, actions, visible
+from labdata.errors import KerogateError
+from labdata.intake import desk as services
+from labdata.intake import layouts as memory
+from labdata.intake import templates_out, workbook
+from labdata.intake.corrections import FIELD, LEAVE_OUT, UNIT, is_correction, unit_options
+from labdata.intake.preparing import CONFIRM
+from labdata.models import RememberedLayout, SourceFile, Upload
+from labdata.pages.common import find, open_project, page_of, person
+from labdata.pages.desk_sheet import field_choices, grid, mapped_tables, tabs
+from labdata.pages.uploads import COUNT_WORDS, LEAVE_BLANK, find_upload, is_busy
+
+SHOWN_FINDINGS = 60
+KEPT_BOOKS, KEPT_BYTES = 2, 4_000_000
+_books: dict[
+    str, workbook.Workbook
+] = {}  # the files last looked at, so that a change of the mapping need not read again
+
+
+@require_safe
+def desk(request: HttpRequest, slug: str, pk: int) -> HttpResponse:
+    """The file as it stands: what was stored, or what would be with the corrections made so far."""
+    at_hand = find_upload(request, open_project(request, slug), pk)
+    if is_busy(at_hand):
+        return redirect("upload", slug, pk)
+    return render(request, "uploads/desk.html", _shown(request, at_hand, services.Draft.of(at_hand), request.GET))
+
+
+@require_POST
+def desk_look(request: HttpRequest, slug: str, pk: int) -> HttpResponse:
+    """The outcome of what the form holds; nothing is written. The form alone for a script, else the whole page."""
+    at_hand = find_upload(request, open_project(request, slug, Action.UPLOAD), pk)
+    if is_busy(at_hand):
+        return redirect("upload", slug, pk)
+    context = _shown(request, at_hand, _draft(request), request.POST)
+    by_script = request.headers.get("HX-Request") == "true"
+    return render(request, "uploads/_desk.html" if by_script else "uploads/desk.html", {**context, "alone": by_script})
+
+
+@require_POST
+def desk_store(request: HttpRequest, slug: str, pk: int) -> HttpResponse:
+    """Store the file with what the form holds; a refusal is said on the file's page."""
+    at_hand = find_upload(request, open_project(request, slug, Action.UPLOAD), pk)
+    try:
+        services.store_with(upload=at_hand, user=person(request), draft=_draft(request))
+    except KerogateError as refusal:
+        messages.error(request, str(refusal))
+    else:
+        messages.success(request, "The file is read again and stored with your mapping.")
+    return redirect("upload", slug, pk)
+
+
+@require_POST
+def upload_withdraw(request: HttpRequest, slug: str, pk: int) -> HttpResponse:
+    """Walk away from a file that has not landed."""
+    at_hand = find_upload(request, open_project(request, slug, Action.UPLOAD), pk)
+    services.withdraw(upload=at_hand, user=person(request))
+    messages.success(request, f"«{at_hand.file_name}» was withdrawn; nothing of it was stored.")
+    return redirect("upload", slug, pk)
+
+
+def _draft(request: HttpRequest) -> services.Draft:
+    """What the form holds. A unit that does not go with the field chosen beside it is left behind."""
+    post, answers = request.POST, {}
+    for name, value in post.items():
+        told = str(value).strip()
+        if told and is_correction(name):
+            answers[name] = told
+        elif told and name.startswith("answer:"):
+            answers[name.removeprefix("answer:")] = told
+    for id_ in post.getlist("ask_again"):
+        answers.pop(id_, None)
+    for name in [name for name in answers if name.startswith(UNIT)]:
+        code = answers.get(FIELD + name.removeprefix(UNIT), "")
+        if code and answers[name] not in unit_options(code):
+            del answers[name]
+    return services.Draft(
+        answers, post.get("lab", ""), post.get("well", ""), "create_wells" in post, "remember" in post
+    )
+
+
+def _shown(request: HttpRequest, at_hand: Upload, draft: services.Draft, place: Any) -> dict[str, Any]:
+    """Everything that the page shows. ``place``: where sheet and first row are asked for."""
+    may = Action.UPLOAD in actions(request.user, at_hand.project)
+    editing = may and services.is_open(at_hand)
+    book = _book(at_hand.source_file)
+    entry, trouble = at_hand.answer or {"tables": [], "findings": [], "counts": {}, "outcome": at_hand.outcome}, ""
+    if editing:
+        try:
+            prepared, counts = services.look(at_hand, draft, person(request), book)
+            entry = prepared.entry(counts, prepared.number)
+        except KerogateError as refusal:
+            trouble = str(refusal)
+    answers = dict(draft.answers)
+    context = {
+        "upload": at_hand, "editing": editing, "trouble": trouble, "outcome": entry["outcome"], "draft": draft,
+        "counts": [(words, entry["counts"].get(name, 0)) for name, words in COUNT_WORDS.items()],
+        "questions": [one for one in entry["findings"] if one["level"] == "question" and one["id"] != CONFIRM],
+        "given": [(id_, text) for id_, text in answers.items() if not is_correction(id_) and id_ != CONFIRM],
+        "fields": field_choices(), "leave_out": LEAVE_OUT,
+    }  # fmt: skip
+    if book is None:
+        return {**context, "findings": _findings(entry, {}), "tabs": [], "tables": [], "grid": None}
+    current = _current(book, entry, place)
+    tables = mapped_tables(book, entry, answers)
+    numbers = {sheet.name: number for number, sheet in enumerate(book.sheets)}
+    return {
+        **context,
+        "sheet": current,
+        "sheet_name": book.sheets[current].name,
+        "tabs": tabs(book, entry, answers, current),
+        "tables": tables,
+        "grid": grid(book.sheets[current], tables, entry, _number(place.get("from"), 1)),
+        "findings": _findings(entry, numbers),
+    }
+
+
+def _findings(entry: dict[str, Any], numbers: dict[str, int]) -> list[dict[str, Any]]:
+    """Findings with the number of their sheet, gravest first; questions have a place of their own."""
+    shown = [
+        {
+            **one,
+            "sheet_number": numbers.get(one["sheet"]),
+            "leave_blank": one["level"] == "error" and one["id"].startswith(LEAVE_BLANK),
+        }
+        for one in entry["findings"]
+        if one["id"] != CONFIRM
+    ]
+    return shown[:SHOWN_FINDINGS] + [{"rest": len(shown) - SHOWN_FINDINGS}] * (len(shown) > SHOWN_FINDINGS)
+
+
+def _current(book: workbook.Workbook, entry: dict[str, Any], place: Any) -> int:
+    """The sheet asked for, else the first with a table."""
+    with_tables = [table["sheet"] for table in entry["tables"]]
+    first = next((at for at, sheet in enumerate(book.sheets) if sheet.name in with_tables), 0)
+    asked = _number(place.get("go") or place.get("sheet"), first)
+    return asked if 0 <= asked < len(book.sheets) else first
+
+
+def _number(text: Any, otherwise: int) -> int:
+    return int(text) if text and str(text).isascii() and str(text).isdigit() and len(str(text)) < 8 else otherwise
+
+
+def _book(file: SourceFile) -> workbook.Workbook | None:
+    """The file's sheets, from memory when it was looked at just before; None when it cannot be read."""
+    if file.sha256 in _books:
+        return _books[file.sha256]
+    try:
+        with default_storage.open(file.stored_as) as stored:
+            book = workbook.read(file.name, stored.read())
+    except (KerogateError, OSError):
+        return None
+    if file.size <= KEPT_BYTES:
+        _books[file.sha256] = book
+        for oldest in list(_books)[:-KEPT_BOOKS]:
+            _books.pop(oldest, None)
+    return book
+
+
+@require_safe
+def layouts(request: HttpRequest, slug: str) -> HttpResponse:
+    """Mappings that people corrected, by laboratory."""
+    project = open_project(request, slug)
+    rows = visible(request.user, RememberedLayout.objects.filter(project=project)).select_related("made_by")
+    return render(request, "uploads/layouts.html", {"page": page_of(request, rows)})
+
+
+@require_POST
+def layout_forget(request: HttpRequest, slug: str, layout: int) -> HttpResponse:
+    """Forget one; the next such file is read as recognised."""
+    project = open_project(request, slug, Action.UPLOAD)
+    rows = visible(request.user, RememberedLayout.objects.filter(project=project)).select_related("project")
+    memory.forget(layout=find(rows, "remembered layout", pk=layout), user=person(request))
+    messages.success(request, "Forgotten; the next file of this layout is read as recognised.")
+    return redirect("layouts", slug)
+
+
+@require_safe
+def template_out(request: HttpRequest, slug: str, method: str) -> HttpResponse:
+    """The empty workbook of a method."""
+    open_project(request, slug)
+    answer = HttpResponse(
+        templates_out.build(method), content_type="application/vnd.openxmlformats-officedocument.spreadsheetml.sheet"
+    )
+    answer["Content-Disposition"] = f'attachment; filename="{method}-empty.xlsx"'
+    return answer
