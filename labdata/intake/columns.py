@@ -15,6 +15,7 @@ if TYPE_CHECKING:
     from labdata.intake.corrections import Said
 
 DEPTH_CHECK = "DEPTH_CHECK"
+SPECTRAL = frozenset({"K", "U", "TH"})
 
 
 @dataclass
@@ -324,8 +325,15 @@ def _name_by_lab_number(columns: list[Column]) -> None:
 
 
 def _give_methods(columns: list[Column]) -> None:
-    """Carbon that stands beside pyrolysis peaks belongs to the pyrolysis analysis, unless its procedure says otherwise."""
+    """Carbon that stands beside pyrolysis peaks belongs to the pyrolysis analysis, unless its procedure says otherwise.
+
+    Potassium, uranium and thorium alone beside gamma are spectral gamma.
+    """
     fields = [column.field for column in columns]
+    elements = {column.field for column in columns if column.method == "elements"}
+    if "GR" in fields and elements and elements <= SPECTRAL:
+        for column in columns:
+            column.method = "gamma" if column.method == "elements" else column.method
     if not any(peak in fields for peak in PYROLYSIS_PEAKS):
         return
     for column in columns:

@@ -1,12 +1,14 @@
 """Which wells of the project a file means, and which samples are already there. Reads only; storing is the registry's."""
 
 import re
+from collections.abc import Sequence
 from dataclasses import dataclass, field
 from typing import Any
 
 from rapidfuzz import fuzz
 
 from labdata.intake.findings import Findings
+from labdata.intake.importers.records import WellRow
 from labdata.intake.names import name_key, uwi_key
 from labdata.intake.rows import Row
 from labdata.models import Project, Sample, Well, WellAlias, WellIdentifier
@@ -17,13 +19,17 @@ _NEAR = 84.0
 
 @dataclass
 class WellPlan:
-    """A well that the file speaks of: an existing one by ``pk``, or one to be made with these details."""
+    """A well that the file speaks of: an existing one by ``pk``, or one to be made with these details.
+
+    ``completions``: what an existing one lacks and the file gives.
+    """
 
     name: str
     uwi: str = ""
     pk: int | None = None
     details: dict[str, str | float] = field(default_factory=dict)
     aliases: set[str] = field(default_factory=set)
+    completions: dict[str, str | float] = field(default_factory=dict)
 
 
 class WellDirectory:
@@ -75,7 +81,7 @@ class WellMatcher:
     findings: Findings
     create: bool
 
-    def match(self, rows: list[tuple[Row, str, str]]) -> dict[tuple[str, str], WellPlan]:
+    def match(self, rows: Sequence[tuple[Row | WellRow, str, str]]) -> dict[tuple[str, str], WellPlan]:
         """(name, uwi) -> well for every pair in the rows; each row comes with its sheet and the address of its well cell."""
         plans: dict[tuple[str, str], WellPlan] = {}
         made: dict[str, WellPlan] = {}

@@ -7,6 +7,7 @@ from typing import Any
 from labdata.intake.columns import Column
 from labdata.intake.corrections import Said
 from labdata.intake.findings import Findings
+from labdata.intake.importers.records import WellRecords
 from labdata.intake.matching import WellPlan
 from labdata.intake.reading import Settled
 from labdata.intake.rows import Row
@@ -99,6 +100,7 @@ class Prepared:
     sha256: str
     findings: Findings
     tables: list[PreparedTable] = field(default_factory=list)
+    records: WellRecords = field(default_factory=WellRecords)
     wells: dict[tuple[str, str], WellPlan] = field(default_factory=dict)
     number: str = ""
     revision: int | None = None
@@ -136,6 +138,8 @@ class Prepared:
                 "rows",
                 "cells",
                 "named",
+                "well_records",
+                "curves",
             ),
             0,
         )
@@ -143,6 +147,8 @@ class Prepared:
             for table in self.tables:
                 for name, number in table.tally().items():
                     total[name] += number
+            total["well_records"] = sum(len(table.rows) for table in self.records.tables)
+            total["curves"] = len(self.records.curves)
             total["wells_new"] = len({id(plan) for plan in self.wells.values() if plan.pk is None})
         return total
 
@@ -150,6 +156,6 @@ class Prepared:
         """The file's entry of the outside contract."""
         return {
             "file": self.file_name, "sha256": self.sha256, "outcome": str(self.outcome), "upload": upload, "report": report,
-            "seconds": round(self.seconds, 3), "tables": [table.as_dict() for table in self.tables], "counts": counts,
+            "seconds": round(self.seconds, 3), "tables": [table.as_dict() for table in (*self.tables, *self.records.tables)], "counts": counts,
             "findings": [finding.as_dict() for finding in self.findings.ordered()],
         }  # fmt: skip

@@ -9,8 +9,10 @@ from labdata.intake.columns import Column, Mapping, map_columns
 from labdata.intake.corrections import Corrections, Said, add_heads
 from labdata.intake.errors import UnreadableFile
 from labdata.intake.findings import Findings
+from labdata.intake.importers.taking import RecordReader, settle
 from labdata.intake.layouts import Memory
 from labdata.intake.matching import SampleDirectory, WellDirectory, WellMatcher, fullest_first
+from labdata.intake.plaintext import CORE_TEXT, LAS, TOPS_TEXT
 from labdata.intake.prepared import Prepared, PreparedTable
 from labdata.intake.reading import Cells, Teller, decimal_comma, read_column
 from labdata.intake.rows import Row, RowReader
@@ -24,6 +26,7 @@ from labdata.intake.workbook import Sheet, address
 from labdata.models import Project
 
 Tick = Callable[[str], None]
+OWN_LAYOUTS = (LAS, CORE_TEXT, TOPS_TEXT)
 CONFIRM, STORE_IT = "confirm", "store it"
 
 
@@ -87,6 +90,9 @@ class _FileReader:
     said: Corrections = field(default_factory=Corrections)
     memory: Memory = field(default_factory=Memory)
 
+    def __post_init__(self) -> None:
+        self.records = RecordReader(self.request, self.made, self.directory, self._ask_well)
+
     @property
     def findings(self) -> Findings:
         return self.made.findings
@@ -94,6 +100,9 @@ class _FileReader:
     def take(self, book: workbook.Workbook) -> None:
         """Fill ``made`` from the workbook."""
         self.said = Corrections.of(self.request.answers, self.request.said_by, self.findings)
+        if book.kind in OWN_LAYOUTS:
+            self._take_text(book.kind)
+            return
         layouts = [(sheet, self._layout(sheet)) for sheet in book.sheets]
         self.whole = read_title([line for _, layout in layouts for line in layout.title])
         self.memory = Memory.of(self.request.project, self.request.lab or self.whole.laboratory)
@@ -101,17 +110,40 @@ class _FileReader:
         for name in book.hidden:
             message = f"Sheet «{name}» is hidden and was not read."
             self.findings.note("hidden_sheet", message, sheet=name, remedy="Show it if it holds results.")
-        if not any(layout.tables for _, layout in layouts):
+        self._sheets_of_records(layouts)
+        if not any(layout.tables for _, layout in layouts) and not self.made.records:
             _no_table(self.request.name, layouts, self.findings)
             return
         self.sheets_with_tables = sum(1 for _, layout in layouts if layout.tables)
         self.whole = read_title([line for _, layout in layouts for line in layout.title])
         for sheet, layout in layouts:
             self._sheet(sheet, layout)
+        self._finish()
+
+    def _take_text(self, kind: str) -> None:
+        """A text with a layout of its own, read whole by its importer."""
+        try:
+            self.made.tables = self.records.take_file(kind)
+        except UnreadableFile as trouble:
+            self.findings.error(trouble.code, trouble.message, remedy=trouble.remedy, value=self.request.name)
+            return
+        self.whole = self.records.facts
+        self.named = [(row, "", f"A{row.line}") for table in self.made.tables for row in table.rows]
+        self._finish()
+
+    def _sheets_of_records(self, layouts: list[tuple[Sheet, Layout]]) -> None:
+        """Sheets without results may hold surveys, tops or other records of wells."""
+        for sheet, layout in layouts:
+            if not layout.tables and self.records.take_sheet(sheet):
+                layout.title, layout.stray = [], []
+
+    def _finish(self) -> None:
+        """What follows once everything is read: wells, the report and its version."""
         self.tick("matching wells and samples")
         matcher = WellMatcher(self.directory, self.findings, self.request.create_wells)
-        self.made.wells = matcher.match(self.named)
+        self.made.wells = matcher.match([*self.named, *self.records.name_rows()])
         well_details(self.made)
+        settle(self.made, self.directory)
         self.made.laboratory = self.request.lab or self.whole.laboratory
         self.made.reported_on = self.whole.reported_on
         self.said.report_unused(self.findings)
@@ -194,9 +226,10 @@ class _FileReader:
             return sheet.name, ""
         return self._ask_well(sheet), ""
 
-    def _ask_well(self, sheet: Sheet) -> str:
+    def _ask_well(self, sheet: Sheet | None = None) -> str:
         """The well of a sheet that names none; sheet by sheet where several do not, since each may be of its own well."""
-        several = self.sheets_with_tables > 1 and "well" not in self.findings.answers
+        several = sheet is not None and self.sheets_with_tables > 1 and "well" not in self.findings.answers
+        sheet = sheet or Sheet("", [])
         id_ = f"well:{sheet.name}" if several else "well"
         if any(finding.id == id_ for finding in self.findings.found):
             return ""

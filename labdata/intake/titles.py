@@ -140,7 +140,9 @@ def read_date(text: str) -> date | None:
 def split_file_name(name: str) -> tuple[str, int | None, bool]:
     """(report number, revision, amended) as the file's name tells: ``KG-17_rev2.xlsx`` is (``KG-17``, 2, False)."""
     stem = PurePath(name).name
-    return split_version(re.sub(r"\.(?:xlsx|xlsm|xlsb|xls|ods|csv|tsv|txt)$", "", stem, flags=re.I))
+    return split_version(
+        re.sub(r"\.(?:xlsx|xlsm|xlsb|xls|ods|csv|tsv|txt|las|tops|spwla|asc|dat)$", "", stem, flags=re.I)
+    )
 
 
 def split_version(number: str) -> tuple[str, int | None, bool]:

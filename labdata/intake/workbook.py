@@ -1,7 +1,6 @@
 """A laboratory file as sheets of cells, whatever its kind. What it is, its bytes tell; its name does not matter."""
 
 import io
-import re
 import zipfile
 import zlib
 from dataclasses import dataclass, field
@@ -10,7 +9,7 @@ from typing import Any
 
 from python_calamine import CalamineError, CalamineWorkbook, SheetVisibleEnum
 
-from labdata.intake import apart, odsfaults, sheetxml, textfile, xlsfaults
+from labdata.intake import apart, odsfaults, plaintext, sheetxml, textfile, xlsfaults
 from labdata.intake.errors import UnreadableFile
 from labdata.intake.values import number_text
 
@@ -133,13 +132,9 @@ def read_here(name: str, content: bytes) -> Workbook:
         raise UnreadableFile(
             f"«{name}» is a web page or XML, whatever its name says.", remedy="Save it as .xlsx or .csv.", file=name
         )
+    if (kind := plaintext.kind_of(content)) is not None:
+        return Workbook(kind, [Sheet("", plaintext.cells(kind, name, content))])
     rows, delimiter = textfile.read_rows(name, content)
-    if re.match(r"\s*~V", content[:2000].decode("latin-1").split("\n", 1)[0], re.I):
-        raise UnreadableFile(
-            f"«{name}» is a well log (LAS), not a table of samples.",
-            remedy="Send the laboratory's table of samples and values.",
-            file=name,
-        )
     if not any(cell.strip() for row in rows for cell in row):
         raise UnreadableFile(f"«{name}» holds nothing but blanks.", remedy="Send the file again.", file=name)
     return Workbook("text", [Sheet("", rows, comma_hint="decimal" if delimiter == ";" else "")])

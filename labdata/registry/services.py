@@ -33,6 +33,7 @@ from labdata.registry.analyses import (
 from labdata.registry.landed import Landed
 from labdata.registry.samples import place_samples
 from labdata.registry.superseding import Difference, OldResult, Predecessor, withdraw
+from labdata.registry.wellrecords import Stored, store_records
 from labdata.registry.wells import make_wells
 
 __all__ = ["Landed", "store"]
@@ -83,6 +84,7 @@ class _Storing:
         self.references: dict[str, int] = {}
         self.columns: dict[tuple[int, int], ColumnIds] = {}
         self.difference = Difference()
+        self.told = Stored()
 
     def run(self) -> Landed:
         wells, self.counts["wells_new"] = make_wells(self.prepared)
@@ -90,7 +92,8 @@ class _Storing:
         rock = [(wells[row.well], row) for row in self._rows() if row.role in ROCK]
         samples, self.counts["samples_new"], self.counts["samples_matched"] = place_samples(rock)
         drafts = [draft for table in self.prepared.tables for draft in self._drafts(report, table, wells, samples)]
-        landed = Landed(self.upload, report, well_ids=sorted({well for well, _ in rock}))
+        self.told = store_records(self.prepared, report, wells)
+        landed = Landed(self.upload, report, well_ids=sorted({well for well, _ in rock} | self.told.wells))
         predecessor = Predecessor.of(report.supersedes) if report.supersedes else None
         if predecessor:
             self._make_room(predecessor, drafts, landed)
@@ -231,6 +234,7 @@ class _Storing:
         upload.save(update_fields=["outcome", "report", "answer"])
         intake.settle_waiting(upload, report)
         layouts.remember(prepared)
+        self.told.record(upload)
         audit.record(
             "report.imported", report, actor=upload.created_by, project=self.project,
             after={

@@ -52,7 +52,7 @@ FILES = {
     "damaged .xls": (OLE + b"\0" * 600, "«r.csv» is a damaged or incomplete workbook (Cannot detect file format)."),
     "password": (OLE + b"\0" * 100 + "EncryptedPackage".encode("utf-16-le"), "«r.csv» is protected with a password."),
     "a web page": (b"<html><table></table></html>", "«r.csv» is a web page or XML, whatever its name says."),
-    "a well log": (b"~Version information\n VERS. 2.0:\n", "«r.csv» is a well log (LAS), not a table of samples."),
+    "a well log": (b"~Version information\n VERS. 2.0:\n", "«r.csv» is a log without values."),
     "binary": (b"\x01\x02\x00\x03" * 50, "«r.csv» is neither a table of text nor a workbook: it holds binary data."),
     "open quote": (HEAD + 'A,10,"1,2\n', "«r.csv» breaks off inside a quoted cell (unexpected end of data)."),
 }  # fmt: skip
