@@ -6,6 +6,7 @@ thresholds.toml.
 """
 
 from qc.rules import (
+    aliquot_overload,
     cuttings_interval,
     depth_above_surface,
     depth_beyond_td,
@@ -22,6 +23,7 @@ from qc.rules import (
     pi_low_tmax_pair,
     pyro_carbon_balance,
     pyro_value_range,
+    ro_depth_trend,
     ro_tmax_disagreement,
     s1_toc_line,
     s2_floor_for_tmax,
@@ -32,10 +34,15 @@ from qc.rules import (
     s3_carbonate_interference,
     sample_sequence,
     strat_top_mismatch,
+    tmax_depth_trend,
     tmax_range,
+    tmax_scale_offset,
+    tmax_shift_suspect,
     toc_floor_for_indices,
+    toc_method_pair,
     toc_sum_check,
     vr_count_sd,
+    vr_low_suspect,
 )
 
 RULES = (
@@ -47,7 +54,10 @@ RULES = (
     toc_floor_for_indices.RULE,
     s2_floor_for_tmax.RULE,
     tmax_range.RULE,
+    tmax_scale_offset.RULE,
     s3_carbonate_interference.RULE,
+    toc_method_pair.RULE,
+    aliquot_overload.RULE,
     free_oil_crossover.RULE,
     s1_toc_line.RULE,
     pi_high_for_maturity.RULE,
@@ -58,6 +68,10 @@ RULES = (
     s2_positive_intercept.RULE,
     s2_toc_outlier.RULE,
     ro_tmax_disagreement.RULE,
+    ro_depth_trend.RULE,
+    tmax_depth_trend.RULE,
+    tmax_shift_suspect.RULE,
+    vr_low_suspect.RULE,
     hi_tmax_envelope.RULE,
     vr_count_sd.RULE,
     depth_interval_order.RULE,

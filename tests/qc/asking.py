@@ -9,6 +9,7 @@ from qc.rules.records import table_of
 from qc.rules.rule import Answer, Finding
 from qc.rules.s2_toc import ARITHMETIC, CONTAMINATION
 
+BEFORE = {"vr_low_suspect": {"ro_depth_trend"}}
 FITTED = {"s2_toc_fit", "s2_retained", "s2_toc_outlier", "s2_positive_intercept"}
 
 # the worked set of the S2-TOC line: TOC [wt%], S2 [mg/g]
@@ -19,6 +20,7 @@ S2 = (0.78, 1.60, 2.34, 3.03, 4.19, 5.21, 6.80, 7.88, 9.86, 11.70, 9.10, 16.95)
 def ask(rule: str, *records: Mapping[str, Any], **around: Any) -> Answer:
     """The rule's answer with the shipped thresholds, after the rules whose answers it reads."""
     before = {*CONTAMINATION, *ARITHMETIC, "s2_toc_fit"} if rule in FITTED else {"pi_high_for_maturity"}
+    before |= BEFORE.get(rule, set())
     off = [other.id for other in RULES if other.id != rule and other.id not in before]
     return run(table_of(records, **around), disabled=off)[rule]
 
