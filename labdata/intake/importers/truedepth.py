@@ -28,7 +28,7 @@ def place_tops(
         datum = datum_of(row.well)
         if tvd is None and datum is not None and below_sea is not None:
             tvd = below_sea + datum
-        cell = f"A{row.line}"
+        cell = f"{_letter(table)}{row.line}"
         if tvd is None:
             findings.error(
                 "datum_unknown", f"Row {row.line} gives depth below sea level, and the well's datum elevation is not known.",
@@ -40,6 +40,10 @@ def place_tops(
             row.values["top_md_m"] = measured
             kept.append(row)
     table.rows = kept
+
+
+def _letter(table: WellTable) -> str:
+    return next((column.letter for column in table.columns if column.field in {"TVDSS", "TVD"}), "A")
 
 
 def _measured(tvd: float, survey: Survey, well: WellKey, findings: Findings, sheet: str) -> float | None:

@@ -112,6 +112,9 @@ class _TableReader:
         self._choose_units(rows)
         made = [one for row in rows if (one := self._row(row)) is not None]
         if not made:
+            if not rows:
+                self._no_rows()
+            records.tables.append(self._table([]))
             return after
         if not ({"WELL", "UWI"} & set(self.columns)):
             self._one_well(made, well_of, records)
@@ -120,6 +123,13 @@ class _TableReader:
         self._not_kept()
         records.tables.append(self._table(made))
         return after
+
+    def _no_rows(self) -> None:
+        place = address(self.header.row, self.header.columns[0].index)
+        self.findings.error(
+            "no_rows", f"The table of {self.header.kind.replace('_', ' ')} at {place} has a header and no rows.",
+            sheet=self.sheet.name, cell=place, remedy="Send the file with its rows.",
+        )  # fmt: skip
 
     def _one_well(self, rows: list[WellRow], well_of: Callable[[str, str], WellKey], records: WellRecords) -> None:
         name, uwi = (self.facts.get(code, ("", ""))[0] for code in ("WELL", "UWI"))
