@@ -68,19 +68,21 @@ def look(
     return prepared, counts
 
 
-def store_with(*, upload: Upload, user: User, draft: Draft) -> Upload:
+def store_with(*, upload: Upload, user: User, draft: Draft, keep: bool = False) -> Upload:
     """Take the draft as the upload's answers and have the file read and stored with them.
 
+    With ``keep`` it is read and then waits for a further look, so that work on the desk can go on later.
     Raises NotAllowed, NotFound, or Conflict once the file is in, was withdrawn or is being read.
     """
     _may(user, upload, draft)
     with transaction.atomic():
         held = _open(upload)
         before = {"answers": held.answers, **_particulars(held)}
-        answers = services.checked_answers({**draft.answers, CONFIRM: STORE_IT})
+        given = {id_: text for id_, text in draft.answers.items() if id_ != CONFIRM}
+        answers = services.checked_answers(given if keep else {**given, CONFIRM: STORE_IT})
         held.options = {
             **held.options, **services.said_by(answers, held.answers, held.options, user), "well": draft.well.strip(),
-            "create_wells": draft.create_wells, "remember": draft.remember,
+            "create_wells": draft.create_wells, "remember": draft.remember, "look": keep or bool(held.options.get("look")),
         }  # fmt: skip
         held.answers, held.laboratory_name = answers, draft.lab.strip()[:160]
         services.read_again(held, user)

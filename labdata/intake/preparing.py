@@ -134,7 +134,8 @@ class _FileReader:
     def _sheets_of_records(self, layouts: list[tuple[Sheet, Layout]]) -> None:
         """Sheets without results may hold surveys, tops or other records of wells."""
         for sheet, layout in layouts:
-            if not layout.tables and self.records.take_sheet(sheet):
+            named = sheet.name in self.said.headers  # a person says where its results stand, or leaves it out
+            if not layout.tables and not named and self.records.take_sheet(sheet):
                 layout.title, layout.stray = [], []
 
     def _finish(self) -> None:

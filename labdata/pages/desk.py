@@ -18,9 +18,10 @@ from labdata.intake.preparing import CONFIRM
 from labdata.models import RememberedLayout, SourceFile, Upload
 from labdata.pages.common import find, open_project, page_of, person
 from labdata.pages.desk_sheet import field_choices, grid, mapped_tables, tabs
-from labdata.pages.uploads import COUNT_WORDS, LEAVE_BLANK, find_upload, is_busy
+from labdata.pages.uploads import COUNT_WORDS, IMPORTED, LEAVE_BLANK, find_upload, is_busy
 
 SHOWN_FINDINGS = 60
+INSTANT_CELLS = 200_000  # a file with more cells is read again only when the button says so, not at each change
 KEPT_BOOKS, KEPT_BYTES = 2, 4_000_000
 _books: dict[
     str, workbook.Workbook
@@ -49,14 +50,18 @@ def desk_look(request: HttpRequest, slug: str, pk: int) -> HttpResponse:
 
 @require_POST
 def desk_store(request: HttpRequest, slug: str, pk: int) -> HttpResponse:
-    """Store the file with what the form holds; a refusal is said on the file's page."""
+    """Store the file with what the form holds, or only keep that with it; a refusal is said on the file's page."""
     at_hand = find_upload(request, open_project(request, slug, Action.UPLOAD), pk)
+    keep = "keep" in request.POST
     try:
-        services.store_with(upload=at_hand, user=person(request), draft=_draft(request))
+        services.store_with(upload=at_hand, user=person(request), draft=_draft(request), keep=keep)
     except KerogateError as refusal:
         messages.error(request, str(refusal))
     else:
-        messages.success(request, "The file is read again and stored with your mapping.")
+        what = (
+            "kept with the file; nothing is stored yet." if keep else "used: the file is read again and stored with it."
+        )
+        messages.success(request, f"Your mapping is {what}")
     return redirect("upload", slug, pk)
 
 
@@ -70,10 +75,10 @@ def upload_withdraw(request: HttpRequest, slug: str, pk: int) -> HttpResponse:
 
 
 def _draft(request: HttpRequest) -> services.Draft:
-    """What the form holds. A unit that does not go with the field chosen beside it is left behind."""
+    """What the form holds; of several inputs of one name the last that is filled. A unit that does not go with the field chosen beside it is left behind."""
     post, answers = request.POST, {}
-    for name, value in post.items():
-        told = str(value).strip()
+    for name in post:
+        told = next((text.strip() for text in reversed(post.getlist(name)) if text.strip()), "")
         if told and is_correction(name):
             answers[name] = told
         elif told and name.startswith("answer:"):
@@ -94,15 +99,18 @@ def _shown(request: HttpRequest, at_hand: Upload, draft: services.Draft, place: 
     may = Action.UPLOAD in actions(request.user, at_hand.project)
     editing = may and services.is_open(at_hand)
     book = _book(at_hand.source_file)
-    entry, trouble = at_hand.answer or {"tables": [], "findings": [], "counts": {}, "outcome": at_hand.outcome}, ""
+    entry = at_hand.answer or {"tables": [], "findings": [], "counts": {}, "outcome": at_hand.outcome}
+    trouble, laboratory = "", at_hand.laboratory_name
     if editing:
         try:
             prepared, counts = services.look(at_hand, draft, person(request), book)
-            entry = prepared.entry(counts, prepared.number)
+            entry, laboratory = prepared.entry(counts, prepared.number), prepared.laboratory
         except KerogateError as refusal:
             trouble = str(refusal)
     answers = dict(draft.answers)
+    size = sum(len(sheet.rows) * max(map(len, sheet.rows), default=0) for sheet in book.sheets) if book else 0
     context = {
+        "instant": size <= INSTANT_CELLS, "laboratory": laboratory, "lands": entry["outcome"] in IMPORTED,
         "upload": at_hand, "editing": editing, "trouble": trouble, "outcome": entry["outcome"], "draft": draft,
         "counts": [(words, entry["counts"].get(name, 0)) for name, words in COUNT_WORDS.items()],
         "questions": [one for one in entry["findings"] if one["level"] == "question" and one["id"] != CONFIRM],

@@ -11,6 +11,7 @@ from django.utils.safestring import SafeString
 from labdata.intake.corrections import FIELD, HEADER, LEAVE_OUT, UNIT, canonical_unit, unit_options
 from labdata.intake.fields import IDENTITY, catalogue, field_types
 from labdata.intake.findings import place_name
+from labdata.intake.tables import MAX_HEADER_ROWS, looks_numeric
 from labdata.intake.workbook import Sheet, Workbook, cell_text, letters
 from labdata.pages.sheet_extract import corners_of
 
@@ -91,16 +92,19 @@ class MappedColumn:
 
 @dataclass(frozen=True)
 class MappedTable:
+    """One recognised table. ``turned``: samples run along the columns; ``fixed``: read by its names alone, as records are."""
+
     sheet: str
     range: str
     kind: str
     turned: bool
+    fixed: bool
     columns: list[MappedColumn]
 
 
 @dataclass(frozen=True)
 class SheetTab:
-    """One sheet of the file and its header rows: as recognised, and as a person says."""
+    """One sheet of the file and its header rows: as recognised, as a person says, and where they may be if neither."""
 
     number: int
     name: str
@@ -108,7 +112,7 @@ class SheetTab:
     recognised: str
     header_name: str
     said: str
-    tables: int
+    likely: str
     findings: int
 
 
@@ -143,10 +147,31 @@ def tabs(book: Workbook, entry: dict[str, Any], answers: dict[str, str], current
         rows = [table.get("header_rows") or [] for table in tables if table.get("orientation") != "columns"]
         made.append(SheetTab(
             number, sheet.name or "the file", number == current, ", ".join(_span(*pair) for pair in rows if pair),
-            HEADER + sheet.name, answers.get(HEADER + sheet.name, ""), len(tables),
+            HEADER + sheet.name, answers.get(HEADER + sheet.name, ""), "" if tables else likely_header(sheet),
             sum(1 for one in entry["findings"] if one["sheet"] == sheet.name and one["level"] in {"error", "question"}),
         ))  # fmt: skip
     return made
+
+
+def likely_header(sheet: Sheet) -> str:
+    """The rows of text above the first two rows with several numbers, such as "4-5"; "" where there are none."""
+    for row in range(1, min(len(sheet.rows) - 1, WINDOW)):
+        if all(_numbers(sheet, at) >= 2 for at in (row, row + 1)):
+            first = row
+            while first > 0 and row - first < MAX_HEADER_ROWS and _words(sheet, first - 1) >= 2:
+                first -= 1
+            return _span(first + 1, row) if first < row else ""
+    return ""
+
+
+def _numbers(sheet: Sheet, row: int) -> int:
+    return sum(1 for cell in sheet.rows[row] if cell_text(cell) and looks_numeric(cell))
+
+
+def _words(sheet: Sheet, row: int) -> int:
+    """How many cells of text a row of nothing else has."""
+    texts = [cell for cell in sheet.rows[row] if cell_text(cell)]
+    return 0 if any(looks_numeric(cell) for cell in texts) else len(texts)
 
 
 def _span(first: int, last: int) -> str:
@@ -163,7 +188,11 @@ def mapped_tables(book: Workbook, entry: dict[str, Any], answers: dict[str, str]
             continue
         turned = table.get("orientation") == "columns"
         reader = _TableReader(number, table, sheet, corners, answers, turned)
-        made.append(MappedTable(table["sheet"], table["range"], table["kind"], turned, reader.columns()))
+        made.append(
+            MappedTable(
+                table["sheet"], table["range"], table["kind"], turned, not table.get("header_rows"), reader.columns()
+            )
+        )
     return made
 
 

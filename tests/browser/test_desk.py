@@ -86,7 +86,7 @@ def test_a_layout_not_seen_before_from_drop_to_stored_results(made, page_for, li
     assert page.locator("tr.read-as td", has_text="TOC wt%").count() == 1
     assert not Result.objects.filter(analysis__report__source_file=upload.source_file).exists()
     page.get_by_role("button", name="Store it").click()
-    page.get_by_text("stored with your mapping").wait_for()
+    page.get_by_text("read again and stored").wait_for()
     upload.refresh_from_db()
     settled(upload)
     page.get_by_role("heading", name="What was stored").wait_for()
@@ -110,7 +110,7 @@ def test_the_next_file_of_the_layout_needs_no_correction(made, page_for, live_se
             page.get_by_label(f"Unit of column {column}").select_option(unit)
     verdict(page, "stored whole")
     page.get_by_role("button", name="Store it").click()
-    page.get_by_text("stored with your mapping").wait_for()
+    page.get_by_text("read again and stored").wait_for()
     upload.refresh_from_db()
     settled(upload)
     drop(page, live_server, made, content.replace(b"1.5", b"1.7").replace(b"A,2000", b"C,2010"), "two.csv")
@@ -145,8 +145,8 @@ def test_the_desk_without_scripts(made, page_for, live_server):
     upload = drop(scripted, live_server, made, odd_workbook(), "run 7.xlsx")
     page = page_for(made.person("coordinator"), java_script_enabled=False)
     page.goto(live_server.url + reverse("desk", args=[made.slug, upload.pk]))
-    page.get_by_label("Header rows of Run 7").fill("4-5")
-    page.get_by_role("button", name="See the outcome").click()
+    page.get_by_role("button", name="Take 4-5").click()
+    assert page.get_by_label("Header rows of Run 7").input_value() == "4-5"
     for column, field in {"A": "WELL", "B": "SAMPLE", "D": "TOC"}.items():
         page.get_by_label(f"Column {column} is read as").select_option(field)
     page.get_by_role("button", name="See the outcome").click()

@@ -167,3 +167,33 @@ def test_an_empty_workbook_is_downloaded(made, as_, at):
     assert load_workbook(io.BytesIO(answer.content)).sheetnames == ["Results"]
     assert as_("interpreter").get(at("template_out", "alchemy")).status_code == 404
     assert at("template_out", "core") in text_of(as_("interpreter").get(at("uploads")))
+
+
+def test_what_is_not_ready_is_kept_for_later(made, as_, at, odd):
+    client = as_("coordinator")
+    client.post(at("desk_store", odd.pk), FIXES | WELL | {"field:D1": "TMAX", "keep": "on"})
+    odd.refresh_from_db()
+    assert "confirm" not in odd.answers
+    assert settled(odd).outcome == "waiting"
+    page = client.get(at("desk", odd.pk))
+    assert '<option value="TMAX" selected>' in text_of(page)
+    client.post(at("desk_store", odd.pk), FIXES | WELL)
+    odd.refresh_from_db()
+    assert settled(odd).outcome == "imported_with_findings"
+
+
+def test_header_rows_are_proposed_where_none_is_recognised(made, as_, at, odd):
+    (tab,) = as_("coordinator").get(at("desk", odd.pk)).context["tabs"]
+    assert (tab.recognised, tab.likely) == ("", "1")
+
+
+def test_a_well_is_chosen_from_the_list_or_written(made, as_, at):
+    user = made.person("coordinator")
+    upload = settled(services.receive(
+        project=made.scene.project, name="no well.csv", content=b"Depth (m),TOC (wt%)\n5,0.9\n", user=user
+    ))  # fmt: skip
+    client = as_("coordinator")
+    well = made.well.name
+    for given in (["", well], [well, ""]):
+        answer = client.post(at("desk_look", upload.pk), {"answer:well": given})
+        assert (answer.context["outcome"], answer.context["given"]) == ("imported", [("well", well)])
