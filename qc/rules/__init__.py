@@ -7,7 +7,10 @@ thresholds.toml.
 
 from qc.rules import (
     aliquot_overload,
+    composition,
+    core_recovery,
     cuttings_interval,
+    datum_missing_or_mixed,
     depth_above_surface,
     depth_beyond_td,
     depth_interval_order,
@@ -17,10 +20,12 @@ from qc.rules import (
     hi_ceiling,
     hi_tmax_envelope,
     index_recalc,
+    md_tvd_consistency,
     oil_based_fluid_interval,
     outside_core,
     pi_high_for_maturity,
     pi_low_tmax_pair,
+    pre_post_extraction,
     pyro_carbon_balance,
     pyro_value_range,
     ro_depth_trend,
@@ -43,6 +48,7 @@ from qc.rules import (
     toc_sum_check,
     vr_count_sd,
     vr_low_suspect,
+    vr_multimodal,
 )
 
 RULES = (
@@ -72,15 +78,21 @@ RULES = (
     tmax_depth_trend.RULE,
     tmax_shift_suspect.RULE,
     vr_low_suspect.RULE,
+    pre_post_extraction.RULE,
     hi_tmax_envelope.RULE,
     vr_count_sd.RULE,
+    vr_multimodal.RULE,
     depth_interval_order.RULE,
     depth_unit_mixup.RULE,
     depth_beyond_td.RULE,
     depth_above_surface.RULE,
     outside_core.RULE,
+    core_recovery.RULE,
     cuttings_interval.RULE,
     sample_sequence.RULE,
     duplicate_depth.RULE,
     strat_top_mismatch.RULE,
+    datum_missing_or_mixed.RULE,
+    md_tvd_consistency.RULE,
+    *composition.RULES,
 )

@@ -5,11 +5,12 @@ import itertools
 import numpy as np
 import pandas as pd
 
+from qc.rules.facts import extracted
 from qc.rules.rule import INFO, NOT_APPLICABLE, PASS, REJECT, WARN, Answer, Finding, Rule, merge, say
 from qc.rules.spans import num, word
 from qc.rules.table import ANALYTES, Table
 
-SLOT = ["well", "kind", "top_m", "base_m", "method", "file"]
+SLOT = ["well", "kind", "top_m", "base_m", "method", "file", "extracted"]
 
 
 def check(table: Table, *, same_label_apart: float, label_repeat_max: float) -> Answer:
@@ -21,6 +22,7 @@ def check(table: Table, *, same_label_apart: float, label_repeat_max: float) -> 
 def _same_depth(table: Table) -> Answer:
     rows = table.rows
     stated = rows["replicate_stated"] | (rows["role"] == "duplicate")
+    rows = rows.assign(extracted=extracted(rows))
     judged = rows[rows["top_m"].notna() & ~stated].sort_values(["table", "line"], kind="stable")
     outcome = pd.Series(NOT_APPLICABLE, index=rows.index, dtype=object)
     outcome[judged.index] = PASS

@@ -57,3 +57,9 @@ def positive(values: Floats) -> Floats:
 def made_or_reported(rows: pd.DataFrame, row: int, index: str, otherwise: str) -> str:
     """The index where the laboratory reported it, else the input that stands for it."""
     return index if num(rows, row, f"{index}_id") >= 0 else otherwise
+
+
+def extracted(rows: pd.DataFrame) -> Bools:
+    """Rows measured on solvent-extracted rock, by remark or label."""
+    after = says(rows, r"\b(?:post|after)[- ]?(?:solvent[- ])?extraction\b|\bextracted\b|\bsolvent[- ]?washed\b")
+    return after & ~says(rows, r"\b(?:not|non|before|pre|prior to|to be)[- ](?:being |solvent[- ])?extract(?:ed|ion)\b")
