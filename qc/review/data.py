@@ -48,6 +48,7 @@ def review_data(review_set: ReviewSet, user: User) -> dict[str, Any]:
         "decisions": _decisions(rows, decided),
         "people": _people(decided),
         "signature": signature(valid_signature(review_set)),
+        "records": _records(review_set),
         "history": _history(review_set),
     }
 
@@ -166,6 +167,12 @@ def signature(record: SignOff | None) -> dict[str, Any] | None:
         "by": record.signer_name, "at": record.signed_at, "meaning": record.meaning, "counts": record.counts,
         "seal": record.content_sha256, "holds": seal.holds(record),
     }  # fmt: skip
+
+
+def _records(review_set: ReviewSet) -> list[dict[str, Any]]:
+    """Every signature the set ever had, newest first; each has its record on paper."""
+    rows = review_set.sign_offs.order_by("-pk").values_list("pk", "signer_name", "signed_at", "reopening")
+    return [{"id": pk, "by": by, "at": at, "ended": ended is not None} for pk, by, at, ended in rows]
 
 
 def _history(review_set: ReviewSet) -> list[dict[str, Any]]:

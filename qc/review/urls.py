@@ -2,7 +2,7 @@
 
 from django.urls import URLPattern, URLResolver, path
 
-from qc.review import plain, views
+from qc.review import outgoing, plain, views
 
 urlpatterns: list[URLPattern | URLResolver] = [
     path("", views.review_sets, name="review_sets"),
@@ -10,6 +10,7 @@ urlpatterns: list[URLPattern | URLResolver] = [
     path("<int:pk>/data/", views.review_data, name="review_data"),
     path("<int:pk>/flags/<int:flag>/", views.review_flag, name="review_flag"),
     path("<int:pk>/plain/", plain.review_plain, name="review_plain"),
+    path("<int:pk>/signatures/<int:signature>.pdf", outgoing.review_record, name="review_record"),
     path("<int:pk>/decide/", views.review_decide, name="review_decide"),
     path("<int:pk>/accept/", views.review_accept, name="review_accept"),
     path("<int:pk>/undo/", views.review_undo, name="review_undo"),

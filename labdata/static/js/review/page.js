@@ -101,7 +101,7 @@ class Page {
       selection: this.selection, bar: this.bar, table: this.table, send: (name, body) => this.send(name, body),
       address: (id) => `${config.flags}${id}/`, mayDecide: () => this.mayDecide(),
     });
-    this.signing = new SignPanel(part("standing"), this.model, { reasons, selection: this.selection, table: this.table, bar: this.bar });
+    this.signing = new SignPanel(part("standing"), this.model, { reasons, selection: this.selection, table: this.table, bar: this.bar, records: config.records });
     tabs(part("side"));
   }
 

@@ -5,8 +5,8 @@ import { make, plural, when } from "./dom.js";
 const LISTED = 200;
 
 export class SignPanel {
-  constructor(box, model, { reasons, selection, table, bar }) {
-    Object.assign(this, { box, reasons, selection, table, bar });
+  constructor(box, model, { reasons, selection, table, bar, records }) {
+    Object.assign(this, { box, reasons, selection, table, bar, records });
     this.update(model);
   }
 
@@ -15,6 +15,7 @@ export class SignPanel {
     this.model = model;
     this.box.replaceChildren(...[
       signature ? this.#signed(signature) : null,
+      this.#papers(model.data.records),
       make("dl", { class: "facts" }, ...["results", "accepted", "rejected", "held", "undecided"].flatMap((name) => [make("dt", {}, name), make("dd", {}, counts[name].toLocaleString("en-GB"))])),
       make("p", {}, Object.keys(people).length ? `Decided by ${Object.entries(people).map(([name, n]) => `${name} (${n})`).join(", ")}.` : "Nobody has decided anything yet."),
       ...this.#lists(model.data.decisions),
@@ -26,6 +27,12 @@ export class SignPanel {
     return make("div", { class: `notice ${holds ? "success" : "error"}` },
       make("p", {}, make("strong", {}, `Signed by ${by}, ${when(at)}.`), ` ${meaning}`),
       make("p", { class: "small" }, holds ? "The seal holds: the set says what was signed. " : "The seal is broken: the set no longer says what was signed. ", make("code", {}, seal.slice(0, 16))));
+  }
+
+  /** A link to the signed record of each signature the set ever had. */
+  #papers(records) {
+    return records.length ? make("ul", { class: "papers" }, ...records.map(({ id, by, at, ended }) => make("li", {},
+      make("a", { href: `${this.records}${id}.pdf`, download: true }, "Signed record (PDF)"), ` ${by}, ${when(at)}${ended ? ", ended by a re-opening" : ""}`))) : null;
   }
 
   #lists(decisions) {
