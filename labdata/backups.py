@@ -26,6 +26,7 @@ FORMAT = 1
 SQLITE_COPY = "kerogate.sqlite3"
 POSTGRESQL_COPY = "kerogate.pgdump"
 KEPT = ("files", "releases")
+OWN = {"secret_key", "service.lock", "set-up.lock"}  # what a command makes of an empty home, and a key brought along
 CHUNK = 1 << 20
 LOCK_SECONDS = 60
 
@@ -200,14 +201,14 @@ def _refuse_full(target: Path) -> None:
 
 
 def _refuse_home_with_data() -> None:
-    """A home that holds data is never overwritten."""
+    """A home that holds anything is never written into."""
     home = settings.HOME
-    holding = [name for name in ("kerogate.sqlite3", *KEPT) if (home / name).exists() and _holds(home / name)]
+    holding = [path.name for path in sorted(home.iterdir()) if path.name not in OWN and _holds(path)]
     if connection.vendor == "postgresql" and "django_migrations" in connection.introspection.table_names():
         holding.append("the PostgreSQL database")
     if holding:
         raise Conflict(
-            f"The home {home} already holds data ({', '.join(holding)}).", remedy="Restore into a new --home."
+            f"The home {home} already holds data ({', '.join(holding[:5])}).", remedy="Restore into a new --home."
         )
 
 

@@ -9,6 +9,7 @@ from qc.models import ReasonCode, ReviewSet, Verdict
 from qc.review.standing import results_of
 
 NEEDS_REASON = (Verdict.REJECTED, Verdict.HELD)
+REASON_WORDS = {word: code for code in ReasonCode if code for word in (code.value, str(code.label).casefold())}
 
 
 @dataclass(frozen=True)
@@ -19,6 +20,13 @@ class Choice:
     verdict: str
     reason: str = ""
     text: str = ""
+
+
+def reason_of(said: str, text: str = "") -> tuple[str, str]:
+    """Code and text of a reason in a person's words: what is no code is free text, code "other" with the words."""
+    if not said or said.casefold() in REASON_WORDS:
+        return str(REASON_WORDS.get(said.casefold(), "")), text
+    return str(ReasonCode.OTHER.value), "; ".join(filter(None, [said, text]))
 
 
 def check_choices(choices: Sequence[Choice]) -> None:

@@ -13,8 +13,8 @@ from django.db import transaction
 from labdata.access import Action, require
 from labdata.errors import InvalidInput
 from labdata.models import Project
-from qc.models import ReasonCode, ReviewSet, Verdict
-from qc.review.choices import Choice, fault_of
+from qc.models import ReviewSet, Verdict
+from qc.review.choices import Choice, fault_of, reason_of
 from qc.review.deciding import decide
 from qc.review.finding import Finder, Unclear
 
@@ -23,7 +23,6 @@ OPTIONAL = ("replicate", "reason", "text", "well")
 VERDICT_WORDS = {
     "accept": Verdict.ACCEPTED, "reject": Verdict.REJECTED, "hold": Verdict.HELD, **{v.value: v for v in Verdict},
 }  # fmt: skip
-REASON_WORDS = {word: code for code in ReasonCode if code for word in (code.value, str(code.label).casefold())}
 SHOWN = 10
 
 
@@ -140,10 +139,7 @@ def _verdict(row: Row) -> tuple[str, str, str]:
     if word not in VERDICT_WORDS:
         known = ", ".join(Verdict.values)
         raise Unclear("verdict", f"«{row.cells.get('verdict', '')}» is no verdict", f"Verdicts: {known}.")
-    said, text = row.cells.get("reason", ""), row.cells.get("text", "")
-    reason = str(REASON_WORDS.get(said.casefold(), ReasonCode.OTHER if said else ""))
-    if reason == ReasonCode.OTHER and said.casefold() not in REASON_WORDS:
-        text = "; ".join(filter(None, [said, text]))
+    reason, text = reason_of(row.cells.get("reason", ""), row.cells.get("text", ""))
     fault = fault_of(VERDICT_WORDS[word], reason, text)
     if fault:
         raise Unclear("reason", fault[0].rstrip(".").lower(), fault[1])

@@ -62,9 +62,9 @@ DECISIONS = [
         "This field is not known here; known: result, analysis, verdict, reason, text.",
     ),
     (
-        {"decisions": [{"result": 1, "verdict": "rejected", "reason": "ugly"}]},
+        {"decisions": [{"result": 1, "verdict": "rejected", "reason": ["ugly"]}]},
         "decisions[0].reason",
-        '"ugly" is not a valid choice.',
+        "Not a valid string.",
     ),
     (
         {"decisions": [{"result": 1, "verdict": "accepted", "text": "a\x00b"}]},

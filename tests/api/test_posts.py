@@ -43,6 +43,17 @@ def test_decisions_on_results_and_analyses_in_one_go(scene):
     assert Decision.objects.get(review_set=scene.sets[1]).text == "10 m off"
 
 
+@pytest.mark.parametrize(
+    ("said", "code", "text"),
+    [("depth", "depth", ""), ("Signal too small", "low_signal", ""), ("doubtful trace", "other", "doubtful trace")],
+)
+def test_a_reason_may_be_a_code_or_plain_words(scene, said, code, text):
+    answer = post(client_for(scene, "geochemist"), "decisions", decision(scene, "rejected", reason=said))
+    assert answer.status_code == 201
+    made = Decision.objects.get()
+    assert (made.reason, made.text) == (code, text)
+
+
 def test_from_decision_to_withdrawal_over_http(scene):
     geochemist, approver = client_for(scene, "geochemist"), client_for(scene, "approver")
     analyses = geochemist.get("/api/v1/analyses").json()["results"]

@@ -46,6 +46,14 @@ def test_a_copy_can_be_put_back_into_an_empty_home_only(copy, tmp_path):
     assert (status, answer["error"]["code"]) == (1, "conflict")
 
 
+def test_a_home_with_anything_in_it_is_not_empty(copy, tmp_path):
+    (tmp_path / "notes.txt").write_text("mine")
+    status, answer = run(tmp_path, "restore", str(copy))
+    assert (status, answer["error"]["code"]) == (1, "conflict")
+    assert "notes.txt" in answer["error"]["message"]
+    assert not (tmp_path / "kerogate.sqlite3").exists()
+
+
 def test_a_damaged_copy_leaves_the_home_empty(copy, tmp_path):
     damaged = shutil.copytree(copy, tmp_path / "copy")
     (damaged / "files/ab/sheet").unlink()

@@ -17,6 +17,7 @@ from labdata.api.idempotency import once
 from labdata.api.schema import IDEMPOTENCY_KEY
 from labdata.models import Result
 from qc.models import Decision, ReasonCode, ReviewSet, SignOff, Verdict
+from qc.review.choices import reason_of
 from qc.review.services import Choice, decide, sign_off
 
 BATCH_LIMIT = 50_000
@@ -41,7 +42,13 @@ class ChoiceBody(Body):
     result = fields.IntegerField(required=False, **AN_ID)
     analysis = fields.IntegerField(required=False, **AN_ID)
     verdict = fields.ChoiceField(choices=Verdict.values)
-    reason = fields.ChoiceField(choices=ReasonCode.values, required=False, default="", allow_blank=True)
+    reason = fields.CharField(
+        required=False,
+        default="",
+        allow_blank=True,
+        max_length=2000,
+        help_text=f"one of {', '.join(filter(None, ReasonCode.values))}; any other words count as «other» with this text",
+    )
     text = fields.CharField(required=False, default="", allow_blank=True, max_length=2000)
 
     def validate(self, attrs: dict[str, Any]) -> dict[str, Any]:
@@ -117,7 +124,8 @@ class Decisions(ListAndDetailView):
             elif only is not None and held != {only}:
                 errors[number] = {kind: [f"The {kind} {choice[kind]} is in review set {min(held)}, not {only}."]}
             for review_set, result in found:
-                chosen[review_set].append(Choice(result, choice["verdict"], choice["reason"], choice["text"]))
+                reason, text = reason_of(choice["reason"], choice["text"])
+                chosen[review_set].append(Choice(result, choice["verdict"], reason, text))
         if errors:
             raise fields.ValidationError({"decisions": cast(Any, errors)})
         return chosen
