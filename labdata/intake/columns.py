@@ -156,8 +156,8 @@ def _first_reading(table: Table, told: "dict[int, Said]") -> tuple[list[tuple[He
             known.append((head, guess))
     for head in unclear:
         taken = {guess.field for _, guess in known} | {one.field for one in told.values()}
-        told = _told_by_values(table, head, taken)
-        known.append((head, told)) if told else unknown.append(head)
+        guess = _told_by_values(table, head, taken)
+        known.append((head, guess)) if guess else unknown.append(head)
     return known, unknown
 
 

@@ -111,7 +111,7 @@ def remember(prepared: "Prepared") -> None:
 
 def _keep(prepared: "Prepared", table: "PreparedTable", found: Table, user: User | None) -> None:
     heads = _named(found)
-    lookup = {
+    lookup: dict[str, Any] = {
         "project": prepared.project,
         "laboratory_name": prepared.laboratory[:160],
         "fingerprint": fingerprint(found),

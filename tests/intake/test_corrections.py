@@ -87,6 +87,12 @@ def test_a_recognised_column_is_overruled_and_the_other_claim_gives_way(project)
     assert any("D is taken for TOC" in one["message"] for one in answer["findings"])
 
 
+def test_several_headers_that_only_say_name_leave_the_rest_as_it_is(project):
+    content = "Name,ID,Code,Depth (m),TOC (wt%)\nQuill 1,A,x,5,2\nQuill 1,B,x,6,3\nQuill 1,C,x,7,3\n"
+    read = columns(entry(project, content, well="", answers={"field:E1": "TC"}))
+    assert {letter: one["field"] for letter, one in read.items()} == {"A": "WELL", "B": "SAMPLE", "D": "TOP", "E": "TC"}
+
+
 def test_a_unit_is_overruled_alone(project):
     content = "Well,Depth (m),Mo (ppm)\nQuill 1,6561.68,2\n"
     answer = entry(project, content, well="", answers={"in:B1": "ft", "in:C1": "wt%"})
