@@ -1,4 +1,4 @@
-"""Error cells of an OpenDocument spreadsheet, which a fast reader gives as empty."""
+"""What a fast reader leaves out of an OpenDocument spreadsheet: error cells, and which cells show percent."""
 
 import zipfile
 from typing import TYPE_CHECKING
@@ -9,13 +9,15 @@ if TYPE_CHECKING:
 
 _TABLE = "{urn:oasis:names:tc:opendocument:xmlns:table:1.0}"
 _TEXT = "{urn:oasis:names:tc:opendocument:xmlns:text:1.0}"
+_OFFICE = "{urn:oasis:names:tc:opendocument:xmlns:office:1.0}"
+_MOST = 1000  # repeated cells beyond are no results
 _CALC = "{urn:org:documentfoundation:names:experimental:calc:xmlns:calcext:1.0}"
 
 
 def add_faults(archive: zipfile.ZipFile, sheets: "list[Sheet]") -> None:
-    """Fill ``faults`` of the sheets from the document's XML."""
+    """Fill ``faults`` and ``percent`` of the sheets from the document's XML."""
     xml = archive.read("content.xml")
-    if b'value-type="error"' not in xml:
+    if b'value-type="error"' not in xml and b'value-type="percentage"' not in xml:
         return
     by_name = {sheet.name: sheet for sheet in sheets}
     for table in ElementTree.fromstring(xml).iter(f"{_TABLE}table"):
@@ -32,5 +34,11 @@ def _table_faults(table: ElementTree.Element, sheet: "Sheet") -> None:
             if cell.get(f"{_CALC}value-type") == "error":
                 paragraph = cell.find(f"{_TEXT}p")
                 sheet.faults[row, column] = (paragraph.text if paragraph is not None else "") or "#error"
+            across = int(cell.get(f"{_TABLE}number-columns-repeated", "1"))
+            if cell.get(f"{_OFFICE}value-type") == "percentage":
+                down = int(line.get(f"{_TABLE}number-rows-repeated", "1"))
+                sheet.percent |= {
+                    (row + r, column + c) for r in range(min(down, _MOST)) for c in range(min(across, _MOST))
+                }
             column += int(cell.get(f"{_TABLE}number-columns-repeated", "1"))
         row += int(line.get(f"{_TABLE}number-rows-repeated", "1"))

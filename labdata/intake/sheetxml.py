@@ -77,24 +77,25 @@ def _index(name: bytes) -> int:
 
 def _formats(sheet: "Sheet", xml: bytes, styles: list[str]) -> None:
     for column, style in set(_STYLED.findall(xml)):
-        _note_format(_index(column), _code(styles, style), sheet.formats, sheet.percent)
+        _note_decimals(_index(column), _code(styles, style), sheet.formats)
+    percent = [str(at) for at, code in enumerate(styles) if "%" in re.sub(r'"[^"]*"|\\.', "", code)]
+    if percent:
+        cells = rf'<c r="([A-Z]+)(\d+)" s="(?:{"|".join(percent)})"(?! t="s")'.encode()
+        sheet.percent |= {(int(row) - 1, _index(column)) for column, row in re.findall(cells, xml)}
 
 
 def _row_formats(sheet: "Sheet", xml: bytes, styles: list[str]) -> None:
     for row, style in set(_STYLED_ROW.findall(xml)):
-        _note_format(int(row) - 1, _code(styles, style), sheet.row_formats, sheet.row_percent)
+        _note_decimals(int(row) - 1, _code(styles, style), sheet.row_formats)
 
 
 def _code(styles: list[str], style: bytes) -> str:
     return styles[int(style)] if int(style) < len(styles) else ""
 
 
-def _note_format(index: int, code: str, decimals: dict[int, int], percent: set[int]) -> None:
-    shown = re.search(r"0\.(0+)", code)
-    if shown:
+def _note_decimals(index: int, code: str, decimals: dict[int, int]) -> None:
+    if shown := re.search(r"0\.(0+)", code):
         decimals[index] = max(decimals.get(index, 0), len(shown.group(1)))
-    if "%" in re.sub(r'"[^"]*"|\\.', "", code):
-        percent.add(index)
 
 
 def _faults(sheet: "Sheet", xml: bytes) -> None:

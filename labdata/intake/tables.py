@@ -9,6 +9,7 @@ from labdata.intake.headers import NAME, Guess, is_unit_or_formula, recognise
 from labdata.intake.workbook import Cell, Sheet, cell_text
 
 MAX_HEADER_ROWS = 4
+REPEATED = "repeats the header"
 _NOTE_WORDS = (
     "note",
     "remark",
@@ -281,7 +282,7 @@ def _heads(sheet: Sheet, top: int, height: int) -> list[Head]:
 
 def _has_symbol(text: str) -> bool:
     """True for a header with an element symbol as a word: ``Mo ppm``, ``MO_PPM``."""
-    words = text.replace("_", " ").split()
+    words = [word.strip(",;:()[]") for word in text.replace("_", " ").split()]
     return any(
         word in element_symbols() or (word.isupper() and word.capitalize() in element_symbols()) for word in words
     )
@@ -351,12 +352,12 @@ def _take_rows(sheet: Sheet, table: Table) -> int:
             continue
         if may_be_header(line):
             if _repeats(line, header):
-                table.skipped.append((row, "repeats the header"))
+                table.skipped.append((row, REPEATED))
                 continue
             note = _is_note(line)
             if not (note and _header_follows(sheet, row, header)) and _starts_table(sheet, row):
                 return row
-            if _is_units(line) and table.rows == []:
+            if _is_units(line) and (not table.rows or table.skipped[-1:] == [(row - 1, REPEATED)]):
                 table.skipped.append((row, "holds units"))
                 continue
             if note:

@@ -41,7 +41,7 @@ def turn(sheet: Sheet, first: int, last: int) -> Sheet:
         sheet.name,
         [column[:height] for column in columns],
         formats=sheet.row_formats,
-        percent=sheet.row_percent,
+        percent={(column, row) for row, column in sheet.percent if first <= row <= last},
         faults={(column, row): fault for (row, column), fault in sheet.faults.items() if first <= row <= last},
         comma_hint=sheet.comma_hint,
         turned=True,

@@ -40,16 +40,21 @@ def choose_units(table: Table, mapping: Mapping, cells: dict[int, Cells], findin
 
 
 def _shown_as_percent(table: Table, mapping: Mapping, cells: dict[int, Cells]) -> None:
-    """A cell that holds 0.0074 and shows 0.74 % holds a fraction."""
+    """A cell that holds 0.0074 and shows 0.74 % holds a fraction; where only some of a column do, those say so themselves."""
+    if not table.sheet.percent:
+        return
     for column in mapping.results:
-        if (
-            column.index in table.sheet.percent
-            and column.unit in {"", "%", "wt%"}
-            and not column.unit_said
-            and cells[column.index].stored_numbers
-        ):
+        if column.unit not in {"", "%", "wt%"} or column.unit_said:
+            continue
+        read = cells[column.index]
+        numbers = [at for at, reading in enumerate(read.readings) if reading.value is not None and not read.texts[at]]
+        shown = [at for at in numbers if (table.rows[at], column.index) in table.sheet.percent]
+        if shown and len(shown) == len(numbers):
             column.unit, column.unit_text = "fraction", "shown as percent"
             column.reason += "; its cells hold fractions shown as percent"
+            continue
+        for at in shown:
+            read.readings[at] = read.readings[at]._replace(unit="fraction")
 
 
 def _from_cells(read: Cells) -> str:

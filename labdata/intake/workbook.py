@@ -35,18 +35,17 @@ class Sheet:
 
     ``turned``: rows and columns are exchanged against the file, so that each sample has a row here too.
     ``merged``: inclusive (top, left, bottom, right) from 0; ``formats``: column -> most decimals that its number
-    formats show; ``percent``: columns shown as percent; ``row_formats`` and ``row_percent``: the same by row, in small sheets; ``faults``: address -> spreadsheet error or unstored formula.
+    formats show; ``percent``: (row, column) of cells that hold a fraction and show percent; ``row_formats``: decimals by row, in small sheets; ``faults``: address -> spreadsheet error or unstored formula.
     """
 
     name: str
     rows: list[list[Cell]]
     merged: list[tuple[int, int, int, int]] = field(default_factory=list)
     formats: dict[int, int] = field(default_factory=dict)
-    percent: set[int] = field(default_factory=set)
+    percent: set[tuple[int, int]] = field(default_factory=set)
     faults: dict[tuple[int, int], str] = field(default_factory=dict)
     comma_hint: str = ""
     row_formats: dict[int, int] = field(default_factory=dict)
-    row_percent: set[int] = field(default_factory=set)
     turned: bool = False
 
     def address(self, row: int, column: int) -> str:

@@ -1,7 +1,7 @@
-"""Error cells of an old .xls workbook, which a fast reader gives as empty.
+"""What a fast reader leaves out of an old .xls workbook: error cells, and which cells show percent.
 
-Walks the compound file to the workbook stream and its records BOUNDSHEET, BOOLERR and FORMULA (Excel binary file
-format, [MS-XLS] 2.4.28, 2.4.24, 2.4.127; [MS-CFB] for the container).
+Walks the compound file to the workbook stream and its records BOUNDSHEET, BOOLERR, FORMULA, FORMAT, XF, NUMBER, RK and
+MULRK (Excel binary file format, [MS-XLS] 2.4; [MS-CFB] for the container).
 """
 
 import struct
@@ -13,17 +13,22 @@ if TYPE_CHECKING:
 
 _ERRORS = {0x00: "#NULL!", 0x07: "#DIV/0!", 0x0F: "#VALUE!", 0x17: "#REF!", 0x1D: "#NAME?", 0x24: "#NUM!", 0x2A: "#N/A"}
 _FORMULA, _EOF, _BOUNDSHEET, _BOOLERR = 0x0006, 0x000A, 0x0085, 0x0205
+_FORMAT, _XF, _NUMBER, _RK, _MULRK = 0x041E, 0x00E0, 0x0203, 0x027E, 0x00BD
+_PERCENT_BUILT_IN = (9, 10)
 _LAST_SECTOR = 0xFFFFFFFA
 
 
 def add_faults(content: bytes, sheets: "list[Sheet]") -> None:
-    """Fill ``faults`` of the sheets; nothing is added when the container has no workbook stream."""
+    """Fill ``faults`` and ``percent`` of the sheets; nothing is added when the container has no workbook stream."""
     try:
         stream = _workbook_stream(content)
         starts = dict(_sheets(stream))
+        percent = _percent_styles(stream)
         for sheet in sheets:
             if (start := starts.get(sheet.name)) is not None:
                 sheet.faults.update(_faults(stream, start))
+                if percent:
+                    sheet.percent.update(_styled(stream, start, percent))
     except (struct.error, IndexError):
         return  # an unusual container: the cells were read, only their error texts stay unknown
 
@@ -57,6 +62,35 @@ def _faults(stream: bytes, start: int) -> Iterator[tuple[tuple[int, int], str]]:
         elif number == _FORMULA and len(body) >= 14 and body[12:14] == b"\xff\xff" and body[6] == 2:
             row, column = struct.unpack_from("<HH", body)
             yield (row, column), _ERRORS.get(body[8], "#error")
+
+
+def _percent_styles(stream: bytes) -> set[int]:
+    """Numbers of the cell styles whose number format shows percent."""
+    formats, styles, count = set(_PERCENT_BUILT_IN), set(), 0
+    for number, body in _records(stream, 0):
+        if number == _FORMAT and len(body) > 5:
+            text = body[5:].decode("utf-16-le" if body[4] & 1 else "latin-1", errors="replace")
+            if "%" in text:
+                formats.add(struct.unpack_from("<H", body)[0])
+        elif number == _XF:
+            if struct.unpack_from("<H", body, 2)[0] in formats:
+                styles.add(count)
+            count += 1
+    return styles
+
+
+def _styled(stream: bytes, start: int, styles: set[int]) -> Iterator[tuple[int, int]]:
+    """(row, column) of number cells in one of these styles."""
+    for number, body in _records(stream, start):
+        if number in {_NUMBER, _RK, _FORMULA} and len(body) >= 6:
+            row, column, style = struct.unpack_from("<HHH", body)
+            if style in styles:
+                yield row, column
+        elif number == _MULRK:
+            row, first = struct.unpack_from("<HH", body)
+            for at in range((len(body) - 6) // 6):
+                if struct.unpack_from("<H", body, 4 + 6 * at)[0] in styles:
+                    yield row, first + at
 
 
 def _workbook_stream(content: bytes) -> bytes:
