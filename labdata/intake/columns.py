@@ -16,6 +16,9 @@ if TYPE_CHECKING:
 
 DEPTH_CHECK = "DEPTH_CHECK"
 SPECTRAL = frozenset({"K", "U", "TH"})
+LEAVE_OUT = "leave out"
+_LIMIT_MARKS = frozenset({"<", ">", "≤", "≥", "~"})
+_PLAIN_MARKS = frozenset({"=", "-", "±"})
 
 
 @dataclass
@@ -348,13 +351,31 @@ def _report_unmapped(table: Table, unknown: list[Head], dropped: list[tuple[Colu
         filled = sum(1 for cell in table.cells(index) if cell_text(cell))
         if not filled:
             continue
-        message = f"{column_name(index, table.sheet.turned)} «{text}» " + (
-            f"was left out: {why}." if why else "was not understood and is left out."
-        )
+        name = column_name(index, table.sheet.turned)
+        if _holds_marks(table, index) and not _without_marks(table, index, f"{name} «{text}»", findings):
+            continue
+        message = f"{name} «{text}» " + (f"was left out: {why}." if why else "was not understood and is left out.")
         findings.note(
             "unmapped_column", message, sheet=table.sheet.name, cell=table.sheet.address(row, index), value=text,
             remedy=f"Its {filled} filled cells stay in the kept file.",
         )  # fmt: skip
+
+
+def _holds_marks(table: Table, index: int) -> bool:
+    """True for a column of nothing but ``<`` and the like, which say what the numbers beside it mean."""
+    texts = {text for cell in table.cells(index) if (text := cell_text(cell).strip())}
+    return bool(texts & _LIMIT_MARKS) and texts <= _LIMIT_MARKS | _PLAIN_MARKS
+
+
+def _without_marks(table: Table, index: int, name: str, findings: Findings) -> bool:
+    """True when a person has said that the marks do not matter: without them ``<`` 0.05 would be read as 0.05."""
+    cell = table.sheet.address(table.top + table.height - 1, index)
+    id_ = f"marks:{place_name(table.sheet.name, cell)}"
+    return findings.ask(
+        id_, "marks_apart", f"{name} holds marks such as < that belong to the numbers of another column.",
+        [LEAVE_OUT], sheet=table.sheet.name, cell=cell,
+        remedy=f"Write them into the cells of the numbers (<0.05) and send the file again, or answer «{id_}» with «{LEAVE_OUT}».",
+    ) is not None  # fmt: skip
 
 
 def _note_likeness(table: Table, columns: list[Column], findings: Findings) -> None:

@@ -87,6 +87,7 @@ class RowReader:
         self._roles(rows)
         self._check_second_depth(rows)
         self._nameless(rows)
+        self._without_depth(rows)
         self._report_kinds()
         return rows
 
@@ -365,6 +366,20 @@ class RowReader:
                     cell=cell,
                     remedy="Give the row a sample number or a depth, or mark it as blank or standard.",
                 )
+
+    def _without_depth(self, rows: list[Row]) -> None:
+        """Samples without a depth among samples with one are said: a standard that is not called one lands here."""
+        column, _ = self._column("TOP")
+        bare = [row for row in rows if row.kept and row.role == "sample" and row.top_m is None]
+        if column is None or not bare or not any(row.top_m is not None for row in rows if row.kept):
+            return
+        names = ", ".join(f"«{row.label}» ({self.table.sheet.row_name(row.line).lower()})" for row in bare[:5])
+        more = f" and {len(bare) - 5} more" if len(bare) > 5 else ""
+        self.findings.warning(
+            "sample_without_depth", f"No depth is given for {names}{more}; they are taken as samples of the well.",
+            sheet=self.sheet, cell=self.table.sheet.address(bare[0].line - 1, column.index),
+            remedy="Give the depth; a reference material or blank is told by its sample type or name.",
+        )  # fmt: skip
 
     def _check_second_depth(self, rows: list[Row]) -> None:
         """The same depth in a second unit must agree within the rounding of both."""
