@@ -18,7 +18,7 @@ from qc.rules.rule import Answer
 from qc.rules.spans import num, word
 
 UNITS = {
-    "TOC": "wt%", "TIC": "wt%", "TC": "wt%", "CARB": "wt%", "MINC": "wt%", "S1": "mg/g", "S2": "mg/g", "S3": "mg/g",
+    "TOC": "wt%", "TIC": "wt%", "TC": "wt%", "TS": "wt%", "CARB": "wt%", "MINC": "wt%", "S1": "mg/g", "S2": "mg/g", "S3": "mg/g",
     "TMAX": "degC", "HI": "mg/g TOC", "OI": "mg/g TOC", "PI": "fraction", "OSI": "mg/g TOC", "S2S3": "ratio",
     "GP": "mg/g", "PC": "wt%", "RC": "wt%", "RO": "%", "RO_SD": "%", "RO_N": "", "RO_MIN": "%", "RO_MAX": "%",
     "ALGINITE": "%", "SIDERITE": "wt%", "ILLITE": "wt%",
