@@ -45,8 +45,8 @@ class Draft:
 
 
 def is_open(upload: Upload) -> bool:
-    """True while the file has not landed, was not withdrawn, and is not being read."""
-    return upload.outcome in services.OPEN and (upload.job is None or upload.job.settled)
+    """True while the file has not landed, was not withdrawn, and is not being read; also when its reading broke off."""
+    return upload.outcome in {*services.OPEN, Upload.Outcome.RECEIVED} and (upload.job is None or upload.job.settled)
 
 
 def look(
@@ -115,7 +115,7 @@ def _open(upload: Upload) -> Upload:
     """The upload, locked. Raises Conflict when nothing can be changed any more, or not now."""
     held = Upload.objects.select_for_update().get(pk=upload.pk)
     if not is_open(held):
-        state = held.get_outcome_display() if held.outcome not in services.OPEN else "being read"
+        state = "being read" if held.job is not None and not held.job.settled else held.get_outcome_display()
         raise Conflict(
             f"«{held.file_name}» is {state}; its mapping cannot be changed now.",
             remedy="Reload the page.",

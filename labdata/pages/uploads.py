@@ -49,7 +49,7 @@ class UploadForm(AgainForm):
 
     lab_files = FilesField(
         label="Laboratory files",
-        help_text="Tables as the laboratory sent them: .xlsx, .xlsm, .xls, .csv, .tsv or .txt. "
+        help_text="Tables as the laboratory sent them: .xlsx, .xlsm, .xls, .ods, .csv, .tsv or .txt; gamma logs as .las. "
         "Drop them here or choose them; what they hold is decided by content, not by name.",
     )
     look = forms.BooleanField(

@@ -132,6 +132,12 @@ def test_the_desk_by_keyboard_and_its_jumps(made, page_for, live_server):
     page.keyboard.press("Enter")
     assert page.evaluate(focused) == "field-0-3"
     assert page.locator("td.is-shown").get_attribute("id") == "cell-C1"
+    with page.expect_response("**/desk/look/"):
+        page.keyboard.press("m")  # mineral carbon, the next of that letter
+    page.locator("#field-0-3.is-set").wait_for()
+    assert page.evaluate(focused) == "field-0-3"  # still there after the desk came anew
+    with page.expect_response("**/desk/look/"):
+        page.locator("#field-0-3").select_option("TOC")
     page.locator(".finding-list a", has_text="C3").focus()
     page.keyboard.press("Enter")
     assert page.evaluate(focused) == "cell-C3"

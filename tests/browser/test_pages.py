@@ -10,7 +10,15 @@ from tests.pages.world import world
 
 pytestmark = [pytest.mark.browser, pytest.mark.django_db(transaction=True)]
 
-NOT_PAGES = {"upload_progress", "job_progress", "file_download", "template_out", "release_data", "release_manifest", "logout"}
+NOT_PAGES = {
+    "upload_progress",
+    "job_progress",
+    "file_download",
+    "template_out",
+    "release_data",
+    "release_manifest",
+    "logout",
+}
 SMALL = {"width": 1024, "height": 768}
 STICKS_OUT = "() => document.documentElement.scrollWidth - document.documentElement.clientWidth"
 

@@ -112,6 +112,13 @@ def test_a_column_without_a_header_is_given_a_field(project):
     assert (columns(answer)["D"]["field"], answer["counts"]["results"]) == ("S2", 2)
 
 
+def test_samples_along_the_columns_are_corrected_by_their_rows(project):
+    content = "Sample,A,B,C\nDepth (m),5,6,7\nFlame,3,4,5\nTOC (wt%),1,2,3\n"
+    answer = entry(project, content, answers={"field:A3": "S2"})
+    read = {one["column"]: one["field"] for one in answer["tables"][0]["columns"]}
+    assert (answer["tables"][0]["orientation"], read["3"], answer["counts"]["results"]) == ("columns", "S2", 6)
+
+
 def test_what_cannot_be_meant_is_named(project):
     answers = {"field:C1": "CARBONISH", "header:": "top one", "in:Z9": "m"}
     answer = entry(project, "Well,Depth (m),TOC (wt%)\nQuill 1,5,2\n", well="", answers=answers)
@@ -184,6 +191,14 @@ def test_a_person_walks_away(project, analyst):
     with pytest.raises(Conflict, match="withdrawn"):
         desk.store_with(upload=upload, user=analyst, draft=desk.Draft(FIXES))
     assert received(project, analyst, answers=FIXES).outcome == "imported_with_findings"
+
+
+def test_a_file_whose_reading_broke_off_is_withdrawn(project, analyst):
+    upload = services.receive(project=project, name="odd.csv", content=ODD.encode(), user=analyst)
+    Job.objects.filter(pk=upload.job_id).update(
+        state=JobState.FAILED, error_code="example", error_message="It broke off."
+    )
+    assert desk.withdraw(upload=Upload.objects.get(pk=upload.pk), user=analyst).outcome == "withdrawn"
 
 
 def test_what_is_in_or_being_read_cannot_be_withdrawn(project, analyst):

@@ -197,3 +197,22 @@ def test_a_well_is_chosen_from_the_list_or_written(made, as_, at):
     for given in (["", well], [well, ""]):
         answer = client.post(at("desk_look", upload.pk), {"answer:well": given})
         assert (answer.context["outcome"], answer.context["given"]) == ("imported", [("well", well)])
+
+
+def test_a_table_on_its_side_is_marked_and_mapped_by_rows(made, as_, at):
+    content = b"Sample,A,B,C\nDepth (m),5,6,7\nFlame,3,4,5\nTOC (wt%),1,2,3\n"
+    user = made.person("coordinator")
+    upload = settled(services.receive(
+        project=made.scene.project, name="side.csv", content=content, user=user, look=True, well=made.well.name
+    ))  # fmt: skip
+    page = as_("coordinator").get(at("desk", upload.pk))
+    (table,) = page.context["tables"]
+    assert [(one.letter, one.header, one.field, one.field_name) for one in table.columns][2] == (
+        "3",
+        "Flame",
+        "",
+        "field:A3",
+    )
+    assert 'id="cell-A3" tabindex="-1" class="found-note in-head is-left"' in text_of(page)
+    answer = as_("coordinator").post(at("desk_look", upload.pk), {"field:A3": "S2", "well": made.well.name})
+    assert ("results", 6) in answer.context["counts"]
