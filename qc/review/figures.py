@@ -38,7 +38,7 @@ MARKERS = {
     Verdict.ACCEPTED.value: Marker("disc", "o", "#009e73", "accepted", "●"),
     Verdict.UNDECIDED.value: Marker("ring", "o", "#4f5a5b", "undecided", "○"),
     FLAGGED: Marker("triangle", "^", "#a8487d", "flagged, undecided", "▲"),
-    Verdict.HELD.value: Marker("half", "D", "#b87f00", "held", "◐"),
+    Verdict.HELD.value: Marker("half", "o", "#b87f00", "held", "◐"),
     Verdict.REJECTED.value: Marker("cross", "x", "#d55e00", "rejected", "✕"),
 }
 SELECTED = "#0072b2"

@@ -11,6 +11,7 @@ urlpatterns: list[URLPattern | URLResolver] = [
     path("<int:pk>/flags/<int:flag>/", views.review_flag, name="review_flag"),
     path("<int:pk>/plain/", plain.review_plain, name="review_plain"),
     path("<int:pk>/signatures/<int:signature>.pdf", outgoing.review_record, name="review_record"),
+    path("<int:pk>/drawing/", outgoing.review_drawing, name="review_drawing"),
     path("<int:pk>/decide/", views.review_decide, name="review_decide"),
     path("<int:pk>/accept/", views.review_accept, name="review_accept"),
     path("<int:pk>/undo/", views.review_undo, name="review_undo"),

@@ -7,6 +7,7 @@ import { Surface } from "../plots/surface.js";
 import { ResultTable } from "../plots/table.js";
 import { TrackStrip } from "../plots/track.js";
 import { DecisionBar } from "./deciding.js";
+import { Downloads } from "./downloads.js";
 import { make, oneOf, plural } from "./dom.js";
 import { Filters } from "./filters.js";
 import { FlagPanel } from "./flags.js";
@@ -48,6 +49,7 @@ class Page {
     this.crossplots = [...root.querySelectorAll("[data-crossplot]")].map((box) => new CrossPlot(new Surface(box, tools), this.model, this.selection, this.marks, tell));
     this.#ownPair();
     this.#showCrossPlots();
+    this.downloads = new Downloads(root.querySelector("#drawing"), this.model, () => this.tracks);
   }
 
   /** Which tracks are drawn: the first ten, or those ticked. */
