@@ -1,5 +1,6 @@
 """The mapping desk: a file's sheets with what was recognised, corrections and their outcome at once, storing or walking away."""
 
+from dataclasses import dataclass, replace
 from typing import Any
 
 from django.contrib import messages
@@ -23,6 +24,7 @@ from labdata.pages.uploads import COUNT_WORDS, IMPORTED, LEAVE_BLANK, find_uploa
 SHOWN_FINDINGS = 60
 INSTANT_CELLS = 200_000  # a file with more cells is read again only when the button says so, not at each change
 KEPT_BOOKS, KEPT_BYTES = 2, 4_000_000
+_looks: "dict[tuple[Any, ...], _Seen]" = {}  # the last look at a large file, for turning its pages
 _books: dict[
     str, workbook.Workbook
 ] = {}  # the files last looked at, so that a change of the mapping need not read again
@@ -96,41 +98,77 @@ def _draft(request: HttpRequest) -> services.Draft:
 
 def _shown(request: HttpRequest, at_hand: Upload, draft: services.Draft, place: Any) -> dict[str, Any]:
     """Everything that the page shows. ``place``: where sheet and first row are asked for."""
-    may = Action.UPLOAD in actions(request.user, at_hand.project)
-    editing = may and services.is_open(at_hand)
+    editing = Action.UPLOAD in actions(request.user, at_hand.project) and services.is_open(at_hand)
     book = _book(at_hand.source_file)
-    entry = at_hand.answer or {"tables": [], "findings": [], "counts": {}, "outcome": at_hand.outcome}
-    trouble, laboratory = "", at_hand.laboratory_name
-    if editing:
-        try:
-            prepared, counts = services.look(at_hand, draft, person(request), book)
-            entry, laboratory = prepared.entry(counts, prepared.number), prepared.laboratory
-        except KerogateError as refusal:
-            trouble = str(refusal)
-    answers = dict(draft.answers)
     size = sum(len(sheet.rows) * max(map(len, sheet.rows), default=0) for sheet in book.sheets) if book else 0
+    instant = size <= INSTANT_CELLS
+    seen = _see(request, at_hand, draft, book, instant) if editing else _as_read(at_hand)
+    entry = seen.entry
     context = {
-        "instant": size <= INSTANT_CELLS, "laboratory": laboratory, "lands": entry["outcome"] in IMPORTED,
-        "upload": at_hand, "editing": editing, "trouble": trouble, "outcome": entry["outcome"], "draft": draft,
+        "instant": instant, "laboratory": seen.laboratory, "trouble": seen.trouble, "counted": seen.counted,
+        "lands": entry["outcome"] in IMPORTED, "upload": at_hand, "editing": editing, "outcome": entry["outcome"], "draft": draft,
         "counts": [(words, entry["counts"].get(name, 0)) for name, words in COUNT_WORDS.items()],
         "questions": [one for one in entry["findings"] if one["level"] == "question" and one["id"] != CONFIRM],
-        "given": [(id_, text) for id_, text in answers.items() if not is_correction(id_) and id_ != CONFIRM],
+        "given": [(id_, text) for id_, text in draft.answers.items() if not is_correction(id_) and id_ != CONFIRM],
         "fields": field_choices(), "leave_out": LEAVE_OUT,
     }  # fmt: skip
-    if book is None:
-        return {**context, "findings": _findings(entry, {}), "tabs": [], "tables": [], "grid": None}
+    return context | (_sheets(book, entry, draft, place) if book else {"findings": _findings(entry, {})})
+
+
+def _sheets(book: workbook.Workbook, entry: dict[str, Any], draft: services.Draft, place: Any) -> dict[str, Any]:
+    """The sheet at hand as a grid, all sheets as tabs, all tables with their columns."""
     current = _current(book, entry, place)
-    tables = mapped_tables(book, entry, answers)
+    tables = mapped_tables(book, entry, dict(draft.answers))
     numbers = {sheet.name: number for number, sheet in enumerate(book.sheets)}
     return {
-        **context,
         "sheet": current,
         "sheet_name": book.sheets[current].name,
-        "tabs": tabs(book, entry, answers, current),
+        "tabs": tabs(book, entry, dict(draft.answers), current),
         "tables": tables,
         "grid": grid(book.sheets[current], tables, entry, _number(place.get("from"), 1)),
         "findings": _findings(entry, numbers),
     }
+
+
+@dataclass(frozen=True)
+class _Seen:
+    """The contract's entry of a file as it is or would be stored. ``counted`` is False when nobody has counted yet."""
+
+    entry: dict[str, Any]
+    laboratory: str
+    trouble: str = ""
+    counted: bool = True
+
+
+def _as_read(at_hand: Upload) -> _Seen:
+    """The entry that reading the file gave last; one that only waits for a look would land."""
+    nothing: dict[str, Any] = {"tables": [], "findings": [], "counts": {}, "outcome": at_hand.outcome}
+    entry = {**nothing, **at_hand.answer}
+    if {one["id"] for one in entry["findings"] if one["level"] in {"error", "question"}} == {CONFIRM}:
+        entry["outcome"] = str(Upload.Outcome.IMPORTED_WITH_FINDINGS)
+        return _Seen(entry, at_hand.laboratory_name, counted=False)
+    return _Seen(entry, at_hand.laboratory_name)
+
+
+def _see(
+    request: HttpRequest, at_hand: Upload, draft: services.Draft, book: workbook.Workbook | None, instant: bool
+) -> _Seen:
+    """The outcome of the draft. A large file is read for it only when the button asks, or when the draft was not seen yet."""
+    key = (at_hand.pk, repr(sorted(draft.answers.items())), draft.lab, draft.well, draft.create_wells)
+    if not instant:
+        if request.method == "GET" and at_hand.answer:
+            return _as_read(at_hand)
+        if key in _looks and "look" not in request.POST:
+            return _looks[key]
+    try:
+        prepared, counts = services.look(at_hand, draft, person(request), book)
+    except KerogateError as refusal:
+        return replace(_as_read(at_hand), trouble=str(refusal))
+    seen = _Seen(prepared.entry(counts, prepared.number), prepared.laboratory)
+    if not instant:
+        _looks.clear()
+        _looks[key] = seen
+    return seen
 
 
 def _findings(entry: dict[str, Any], numbers: dict[str, int]) -> list[dict[str, Any]]:

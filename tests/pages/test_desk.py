@@ -8,6 +8,7 @@ from openpyxl import load_workbook
 
 from labdata.intake import services
 from labdata.models import Job, JobState, RememberedLayout, Upload
+from labdata.pages import desk as pages
 from tests.intake.landing import carry
 from tests.intake.test_corrections import FIXES, ODD
 
@@ -216,3 +217,26 @@ def test_a_table_on_its_side_is_marked_and_mapped_by_rows(made, as_, at):
     assert 'id="cell-A3" tabindex="-1" class="found-note in-head is-left"' in text_of(page)
     answer = as_("coordinator").post(at("desk_look", upload.pk), {"field:A3": "S2", "well": made.well.name})
     assert ("results", 6) in answer.context["counts"]
+
+
+def test_a_large_file_is_read_again_only_when_asked(made, as_, at, monkeypatch):
+    content = b"Well,Depth (m),TOC (wt%)\n" + b"".join(b"Quill 1,%d,1.5\n" % (2000 + at) for at in range(120))
+    user = made.person("coordinator")
+    upload = settled(services.receive(
+        project=made.scene.project, name="large.csv", content=content, user=user, look=True, create_wells=True
+    ))  # fmt: skip
+    monkeypatch.setattr(pages, "INSTANT_CELLS", 100)
+    looks = []
+    plain = pages.services.look
+    monkeypatch.setattr(pages.services, "look", lambda *args: looks.append(args) or plain(*args))
+    client = as_("coordinator")
+    first = client.get(at("desk", upload.pk))
+    assert (first.context["lands"], first.context["counted"], looks) == (True, False, [])
+    assert "hx-post" not in text_of(first)
+    sent = {"create_wells": "on", "field:C1": "TC"}
+    seen = client.post(at("desk_look", upload.pk), sent | {"look": "on"})
+    assert ("results", 120) in seen.context["counts"]
+    turned = client.post(at("desk_look", upload.pk), sent | {"from": "101"})
+    assert (turned.context["grid"].first, turned.context["tables"][0].columns[2].field, len(looks)) == (101, "TC", 1)
+    client.post(at("desk_look", upload.pk), sent | {"field:C1": "TIC"})
+    assert len(looks) == 2
