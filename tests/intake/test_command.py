@@ -3,7 +3,7 @@
 import json
 
 import pytest
-from django.core.management import call_command
+from django.core.management import CommandError, call_command
 
 from labdata.models import Project, Report, Upload, Well
 
@@ -74,3 +74,11 @@ def test_answers_come_from_a_file(tmp_path, capsys):
 def test_a_project_that_does_not_exist_is_refused(table, capsys):
     status, answer = run(capsys, table, "--project", "nowhere")
     assert (status, answer["error"]["code"]) == (1, "not_found")
+
+
+def test_a_wrong_file_name_is_said_before_any_file_is_taken_in(table, capsys):
+    arguments = (table, table.with_name("gone.csv"), "--project", "basin", "--create-project", "--well", "Quill 1")
+    with pytest.raises(CommandError, match=r"gone\.csv» cannot be opened") as wrong:
+        run(capsys, *arguments)
+    assert wrong.value.returncode == 2
+    assert not Upload.objects.exists()

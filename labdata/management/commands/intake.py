@@ -39,13 +39,11 @@ class Command(ServiceCommand):
             "project": project, "lab": options["lab"], "well": options["well"], "create_wells": options["create_wells"],
             "answers": _answers(options["answers"]),
         }  # fmt: skip
-        return {"files": [self._one(Path(name), common, user, options["dry_run"]) for name in options["files"]]}
+        paths = [_readable(Path(name)) for name in options["files"]]
+        return {"files": [self._one(path, common, user, options["dry_run"]) for path in paths]}
 
     def _one(self, path: Path, common: dict[str, Any], user: Any, dry_run: bool) -> dict[str, Any]:
-        try:
-            content = path.read_bytes()
-        except OSError as trouble:
-            raise CommandError(f"«{path}» cannot be opened: {trouble.strerror}.", returncode=2) from trouble
+        content = path.read_bytes()
         self.progress(f"{path.name} …")
         if dry_run:
             return services.preview(name=path.name, content=content, **common)
@@ -72,6 +70,15 @@ class Command(ServiceCommand):
             for finding in entry["findings"]:
                 place = f"{finding['sheet']}!{finding['cell']}".strip("!")
                 self.stdout.write(f"  {finding['level']} {place} {finding['message']} {finding['remedy']}")
+
+
+def _readable(path: Path) -> Path:
+    """``path``, opened once: a wrong name is said before any file of the command is taken in."""
+    try:
+        path.open("rb").close()
+    except OSError as trouble:
+        raise CommandError(f"«{path}» cannot be opened: {trouble.strerror}.", returncode=2) from trouble
+    return path
 
 
 def _project(slug: str, *, create: bool, dry: bool) -> Project:
