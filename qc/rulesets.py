@@ -84,6 +84,11 @@ def _known(rules: Collection[str]) -> list[str]:
     return list(rules)
 
 
+def changed_thresholds(thresholds: Mapping[str, Any], changes: Changes) -> dict[str, Any]:
+    """The thresholds as they would be after ``changes``, kept nowhere. Raises InvalidInput as ``new_version`` does."""
+    return _changed({**defaults(), **thresholds}, changes, "proposed")
+
+
 def _changed(thresholds: Mapping[str, Any], changes: Changes, where: str) -> dict[str, Any]:
     """A copy of the thresholds with the changes in it, each saying where it is from."""
     made = {rule: {name: dict(entry) for name, entry in names.items()} for rule, names in thresholds.items()}

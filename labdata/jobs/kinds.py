@@ -31,6 +31,7 @@ class Kind:
 KINDS = {
     "intake": Kind("labdata.pipeline.process_upload"),
     "qc": Kind("qc.services.prepare_qc", stall_seconds=300),
+    "rehearse": Kind("qc.rehearsal.services.prepare_rehearsal", stall_seconds=600),
     "release": Kind("labdata.release.services.prepare_release", stall_seconds=300),
 }
 

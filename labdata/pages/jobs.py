@@ -50,6 +50,8 @@ def _made(project: Project, at_hand: Job) -> tuple[str, str] | None:
         return "the file", reverse("upload", args=[project.slug, upload])
     if at_hand.kind == "qc" and at_hand.result.get("run"):
         return "the QC run", reverse("qc_run", args=[project.slug, at_hand.result["run"]])
+    if at_hand.kind == "rehearse" and at_hand.result:
+        return "the rehearsal", reverse("rehearse", args=[project.slug])
     if at_hand.kind == "release" and at_hand.result.get("release"):
         release = Release.objects.filter(project=project, pk=at_hand.result["release"]).first()
         return ("the release", reverse("release", args=[project.slug, release.number])) if release else None

@@ -22,7 +22,7 @@ ROOMS: tuple[tuple[str, str, Action, tuple[str, ...]], ...] = (
     ("Project", "project", Action.VIEW, ("project", "job", "jobs")),
     ("Wells", "wells", Action.VIEW, ("wells", "well", "sample", "result", "custody")),
     ("Uploads", "uploads", Action.VIEW, ("uploads", "upload")),
-    ("QC", "qc_runs", Action.VIEW, ("qc", "rules", "rule")),
+    ("QC", "qc_runs", Action.VIEW, ("qc", "rules", "rule", "rehearse")),
     ("Review", "review_sets", Action.VIEW, ("review",)),
     ("Releases", "releases", Action.VIEW, ("releases", "release")),
     ("Audit", "audit", Action.READ_AUDIT, ("audit",)),

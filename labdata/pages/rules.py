@@ -14,6 +14,7 @@ from labdata.models import Project
 from labdata.pages.common import attempt, find, open_project, page_of, person
 from qc import explain
 from qc.models import Flag, RuleSet
+from qc.rehearsal.preview import preview
 from qc.rulesets import effective_rule_set, new_version
 
 
@@ -71,14 +72,31 @@ def rule(request: HttpRequest, slug: str, rule_id: str) -> HttpResponse:
     form = ThresholdForm(
         request.POST or None, thresholds=told["thresholds"], initial={"enabled": told["enabled"]}, prefix="rule"
     )
-    if request.method == "POST" and form.is_valid():
+    looked = None
+    if request.method == "POST" and "preview" in request.POST:
+        form.fields["reason"].required = False
+        looked = attempt(form, lambda: _preview(project, told, form)) if form.is_valid() else None
+    elif request.method == "POST" and form.is_valid():
         made = attempt(form, lambda: _change(request, project, told, form))
         if made:
             messages.success(request, f"Version {made.version} of the thresholds is in force from the next QC run.")
             return redirect("rule", slug, rule_id)
     flags = Flag.objects.in_force().filter(well__project=project, rule=rule_id)
     flags = flags.select_related("well", "analysis__sample", "analysis__method").order_by("well", "pk")
-    return render(request, "qc/rule.html", {"rule": told, "form": form, "page": page_of(request, flags)})
+    context = {"rule": told, "form": form, "page": page_of(request, flags), "preview": looked}
+    return render(request, "qc/rule.html", context)
+
+
+def _preview(project: Project, told: dict[str, Any], form: ThresholdForm) -> dict[str, Any]:
+    """What the numbers in the form would change on this project's data; nothing is kept."""
+    changes = form.changes()
+    return preview(project, {told["id"]: changes} if changes else {}, _switched_off(project, told, form))
+
+
+def _switched_off(project: Project, told: dict[str, Any], form: ThresholdForm) -> set[str]:
+    """Rules that do not run once the form is saved."""
+    others = set(effective_rule_set(project).disabled) - {told["id"]}
+    return others if form.cleaned_data["enabled"] else others | {told["id"]}
 
 
 def _change(request: HttpRequest, project: Project, told: dict[str, Any], form: ThresholdForm) -> RuleSet | None:
@@ -87,10 +105,9 @@ def _change(request: HttpRequest, project: Project, told: dict[str, Any], form: 
     if not changes and enabled == told["enabled"]:
         form.add_error(None, "Nothing changed: every number is as it was.")
         return None
-    off = set(effective_rule_set(project).disabled) - {told["id"]} | (set() if enabled else {told["id"]})
     return new_version(
         project=project, changes={told["id"]: changes} if changes else {}, author=person(request),
-        reason=form.cleaned_data["reason"], disabled=off,
+        reason=form.cleaned_data["reason"], disabled=_switched_off(project, told, form),
     )  # fmt: skip
 
 

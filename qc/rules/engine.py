@@ -6,10 +6,12 @@ from dataclasses import replace
 from qc.rules import RULES
 from qc.rules.evidence import Witness
 from qc.rules.rule import Answer, Rule
+from qc.rules.s2_toc import ARITHMETIC, CONTAMINATION
 from qc.rules.table import Table
 from qc.rules.thresholds import Parameters, defaults, values
 
 RuleSetValues = Mapping[str, Parameters]
+HEEDED = frozenset((*CONTAMINATION, *ARITHMETIC))  # rules whose findings later rules pay heed to
 
 
 def parameters(rule: Rule, given: RuleSetValues) -> dict[str, Mapping[str, object]]:
@@ -36,7 +38,7 @@ def run(
         step(rule.id)
         numbers = parameters(rule, given or {})
         answer = rule.check(table.knowing(answers), **values(numbers))
-        if witness and answer.findings:
+        if witness and answer.findings and rule.id in HEEDED:
             prints = [witness.fingerprint(rule, numbers, finding) for finding in answer.findings]
             answer = replace(answer, settled=frozenset(at for at, one in enumerate(prints) if one in dismissed))
         answers[rule.id] = answer

@@ -6,7 +6,7 @@ from typing import Any
 import pandas as pd
 
 from qc.rules.rule import CANNOT_EVALUATE, FIRE, NOT_APPLICABLE, PASS, WARN, Answer, Finding, Rule
-from qc.rules.table import Table
+from qc.rules.table import IDENTITY, Table
 
 _RANKS = re.compile(r"\b(?:formation|fm|member|mbr|group|gp|shale|sh)\b\.?", re.IGNORECASE)
 
@@ -18,7 +18,7 @@ def plain(name: str) -> str:
 
 def check(table: Table, *, tolerance: float) -> Answer:
     """One check for each sample with a stated formation. A name that the tops do not hold may be an alias: not judged."""
-    samples = table.samples()
+    samples = table.samples()[list(IDENTITY)]  # without the analytes, whose many columns make each row slow
     outcome = pd.Series(NOT_APPLICABLE, index=samples.index, dtype=object)
     findings: list[Finding] = []
     stated = samples[samples["formation"].ne("")]

@@ -53,6 +53,7 @@ PAGES = {
     "job_progress": Page(names=("job",)),
     "qc_runs": VIEW,
     "qc_start": Page(Action.RUN_QC, "post", data={"well": "999999"}, ok=404),  # no such well
+    "rehearse": VIEW,
     "qc_run": Page(names=("run",)),
     "rules": VIEW,
     "rules_compare": VIEW,

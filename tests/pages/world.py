@@ -48,6 +48,25 @@ ANSWER = {
     "findings": [QUESTION, {"level": "warning", "id": "w1", "code": "footnote", "sheet": "Sheet1", "cell": "F7",
                             "value": "0.5*", "message": "A footnote mark follows the number.", "remedy": "None needed."}],
 }  # fmt: skip
+KIND = {
+    "kind": "index_digits", "title": "Two digits of an index exchanged", "definition": "off by 8 to 30 %", "meant_rules": [],
+    "candidates": 20,
+}  # fmt: skip
+REHEARSAL = {
+    "project": "scene", "rule_set": {"name": "standard", "version": 1}, "wells": {"rehearsed": 2, "with_analyses": 2}, "seed": 1,
+    "kinds": [
+        {**KIND, "strength": "moderate", "applicable": True, "injected": 9, "caught": 8, "rate": 0.889,
+         "rules": {"index_recalc": 8}, "missed": ["Quill 1 S-2 at 2020.00 m: HI 250 → 520"]},
+        {**KIND, "strength": "strong", "applicable": False, "injected": 0, "caught": 0, "rate": None, "rules": {}, "missed": [],
+         "reason": "none of 20 candidates can carry it at this strength"},
+    ],
+    "false_alarms": {
+        "analyses": 40, "flagged": 1, "rate": 0.025, "by_rule": {"index_recalc": 1}, "sets": {},
+        "left_out": {"analyses_with_accepted_fault": 2},
+        "limits_of_reading": {"rules": ["toc_floor_for_indices"], "analyses": 3},
+        "after_injection": {"samples": 400, "flagged": 2, "rate": 0.005, "by_rule": {"index_recalc": 2}, "sets": {}},
+    },
+}  # fmt: skip
 
 
 @dataclass
@@ -104,6 +123,9 @@ def world() -> World:
     _along(scene, well)
     result = Result.objects.filter(analysis__sample__well=well, analyte__code="S2").order_by("pk")[1]
     job = _job(scene)
+    Job.objects.create(
+        project=scene.project, kind="rehearse", state=JobState.SUCCEEDED, finished_at=timezone.now(), result=REHEARSAL
+    )
     issue_token(scene.person("coordinator"), scene.project, "read", 30)
     return World(
         scene, well, result, _upload(scene, job), job, _run(scene, well, result), _release(scene),
