@@ -6,9 +6,12 @@ thresholds.toml.
 """
 
 from qc.rules import (
+    additive_signature,
     aliquot_overload,
+    caving_trend_outlier,
     composition,
     core_recovery,
+    cuttings_core_bias,
     cuttings_interval,
     datum_missing_or_mixed,
     depth_above_surface,
@@ -21,10 +24,12 @@ from qc.rules import (
     hi_tmax_envelope,
     index_recalc,
     md_tvd_consistency,
+    mud_solids_elements,
     oil_based_fluid_interval,
     outside_core,
     pi_high_for_maturity,
     pi_low_tmax_pair,
+    plugs,
     pre_post_extraction,
     pyro_carbon_balance,
     pyro_value_range,
@@ -69,6 +74,10 @@ RULES = (
     pi_high_for_maturity.RULE,
     pi_low_tmax_pair.RULE,
     oil_based_fluid_interval.RULE,
+    additive_signature.RULE,
+    caving_trend_outlier.RULE,
+    cuttings_core_bias.RULE,
+    mud_solids_elements.RULE,
     s2_toc_fit.RULE,
     s2_retained.RULE,
     s2_positive_intercept.RULE,
@@ -95,4 +104,5 @@ RULES = (
     datum_missing_or_mixed.RULE,
     md_tvd_consistency.RULE,
     *composition.RULES,
+    *plugs.RULES,
 )

@@ -12,8 +12,8 @@ WINDOW = 10  # five above and five below, fewer where the unit is small
 def around(rows: pd.DataFrame, values: Floats, minimum: int, *, window: int = WINDOW) -> pd.DataFrame:
     """For each row ``median``, ``scale`` (MADN) and ``count`` of its nearest neighbours with a value, in depth.
 
-    Neighbours are of the same well, unit and sample kind. NaN where they are fewer than ``minimum``; a row without a
-    value has neighbours too.
+    Neighbours are of the same well, unit and sample kind. NaN where they are fewer than ``minimum``, and for a row
+    without a value.
     """
     made = pd.DataFrame({"median": np.nan, "scale": np.nan, "count": 0}, index=rows.index)
     known = pd.DataFrame({"value": values, "top": rows["top_m"]}, index=rows.index).dropna()

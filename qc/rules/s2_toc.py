@@ -15,7 +15,8 @@ from qc.rules.table import Table
 
 POINTS_SHOWN = 100
 CONTAMINATION = (
-    "free_oil_crossover", "s1_toc_line", "pi_high_for_maturity", "pi_low_tmax_pair", "oil_based_fluid_interval"
+    "free_oil_crossover", "s1_toc_line", "pi_high_for_maturity", "pi_low_tmax_pair", "oil_based_fluid_interval",
+    "additive_signature", "caving_trend_outlier",
 )  # fmt: skip
 ARITHMETIC = ("index_recalc", "pyro_carbon_balance", "hi_ceiling", "pyro_value_range")
 

@@ -50,12 +50,19 @@ def seen(table: Table, answers) -> dict[str, tuple[list[str], list[str]]]:
 
 
 PER_SET = {
-    "oil_based_fluid_interval",
-    "s2_toc_fit",
-    "s2_positive_intercept",
-    "sample_sequence",
+    "core_log_shift",
+    "core_recovery",
+    "cuttings_core_bias",
+    "datum_missing_or_mixed",
     "depth_interval_order",
     "depth_unit_mixup",
+    "lag_depth_error",
+    "md_tvd_consistency",
+    "oil_based_fluid_interval",
+    "s2_positive_intercept",
+    "s2_toc_fit",
+    "sample_sequence",
+    "tmax_scale_offset",
 }
 
 
