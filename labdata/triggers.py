@@ -8,7 +8,7 @@ every migration (qc/apps.py), since a migration that rebuilds a table on SQLite 
 
 from django.db.backends.base.base import BaseDatabaseWrapper
 
-APPEND_ONLY = ("labdata_auditentry", "qc_decision", "qc_signoff", "qc_reopening", "qc_flaganswer")
+APPEND_ONLY = ("labdata_auditentry", "qc_decision", "qc_signoff", "qc_reopening", "qc_flaganswer", "qc_note")
 FROZEN = {
     "labdata_result": ("current",),
     "labdata_release": ("withdrawn_at", "withdrawn_by_id", "withdrawn_reason"),

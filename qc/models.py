@@ -255,6 +255,48 @@ class FlagAnswer(models.Model):
         return f"{self.rule} {self.answer}"
 
 
+class NoteKind(Choices):
+    NOTE = "note", "note"
+    QUESTION = "question", "question to the laboratory"
+    ANSWER = "answer", "answer of the laboratory"
+
+
+class Note(models.Model):
+    """A word in the thread of a result or a flag: a note, a question to the laboratory, or its answer. Append-only.
+
+    A flag is named by rule and fingerprint, so that its thread outlives the run; where the flag speaks of one result,
+    ``result`` is that one. A question is open until an answer points to it.
+    """
+
+    review_set = models.ForeignKey(ReviewSet, on_delete=models.PROTECT, related_name="notes")
+    result = models.ForeignKey(Result, on_delete=models.PROTECT, null=True, blank=True, related_name="notes")
+    rule = models.CharField(max_length=40, blank=True)
+    fingerprint = models.CharField(max_length=64, blank=True, db_index=True)
+    kind = models.CharField(max_length=8, choices=NoteKind.choices, default=NoteKind.NOTE)
+    answers = models.ForeignKey("self", on_delete=models.PROTECT, null=True, blank=True, related_name="answered_by")
+    text = models.TextField()
+    written_by = models.ForeignKey(settings.AUTH_USER_MODEL, on_delete=models.PROTECT, related_name="+")
+    written_at = models.DateTimeField(default=timezone.now)
+
+    class Meta:
+        ordering = ["id"]
+        constraints = [
+            NoteKind.constraint("kind", "note_kind_known"),
+            models.CheckConstraint(condition=~models.Q(text=""), name="note_says_something"),
+            models.CheckConstraint(
+                condition=models.Q(result__isnull=False) | ~models.Q(fingerprint=""), name="note_is_about_something"
+            ),
+            models.CheckConstraint(
+                condition=models.Q(kind="answer", answers__isnull=False)
+                | (~models.Q(kind="answer") & models.Q(answers=None)),
+                name="note_answer_answers",
+            ),
+        ]
+
+    def __str__(self) -> str:
+        return f"{self.kind} {self.pk}"
+
+
 class SignOff(models.Model):
     """A second person's signature over exactly what was seen. Append-only.
 

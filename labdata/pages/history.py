@@ -7,7 +7,8 @@ from django.contrib.auth.models import User
 
 from labdata.models import Release, Result, Upload
 from labdata.pages.sheet_extract import address
-from qc.models import Decision, ReasonCode, ReviewSet, SignOff, Verdict
+from qc.models import Decision, NoteKind, ReasonCode, ReviewSet, SignOff, Verdict
+from qc.review import notes
 
 
 @dataclass(frozen=True)
@@ -18,9 +19,9 @@ class Event:
 
 
 def history(result: Result) -> list[Event]:
-    """Import, versions, decisions, signatures and releases of the result."""
+    """Import, versions, decisions, notes, signatures and releases of the result."""
     review_set = ReviewSet.objects.filter(items__analysis=result.analysis_id).first()
-    events = [_imported(result), *_versions(result), *_decisions(result)]
+    events = [_imported(result), *_versions(result), *_decisions(result), *_notes(result)]
     if review_set:
         events += _signatures(review_set)
     return sorted(events, key=lambda event: event.at)
@@ -80,6 +81,16 @@ def _decided(decision: Decision) -> str:
     if decision.verdict == Verdict.UNDECIDED:
         return f"{who} took the decision back{why}."
     return f"{who} {'put it on hold' if decision.verdict == Verdict.HELD else f'{decision.verdict} it'}{why}."
+
+
+def _notes(result: Result) -> list[Event]:
+    did = {
+        NoteKind.NOTE: "noted", NoteKind.QUESTION: "asked the laboratory", NoteKind.ANSWER: "wrote down its answer",
+    }  # fmt: skip
+    return [
+        Event(note.written_at, f"{name(note.written_by)} {did[NoteKind(note.kind)]}: «{note.text}»", note.kind)
+        for note in notes.of_result(result)
+    ]
 
 
 def _signatures(review_set: ReviewSet) -> list[Event]:

@@ -11,6 +11,7 @@ from labdata.pages.common import find, open_project
 from labdata.pages.history import history
 from labdata.pages.sheet_extract import Extract, address, extract
 from qc.models import Flag, ReviewSet
+from qc.review import notes
 from qc.review.standing import standing
 
 
@@ -29,6 +30,7 @@ def result(request: HttpRequest, slug: str, pk: int) -> HttpResponse:
         pk=pk,
     )  # fmt: skip
     sheet, trouble = _sheet(at_hand)
+    review_set = ReviewSet.objects.filter(items__analysis=at_hand.analysis_id).first()
     context = {
         "result": at_hand,
         "address": address(at_hand),
@@ -37,7 +39,10 @@ def result(request: HttpRequest, slug: str, pk: int) -> HttpResponse:
         "flags": Flag.objects.in_force().filter(result=at_hand),
         "analysis_flags": Flag.objects.in_force().filter(analysis=at_hand.analysis, result__isnull=True),
         "history": history(at_hand),
-        "review_set": ReviewSet.objects.filter(items__analysis=at_hand.analysis_id).first(),
+        "review_set": review_set,
+        "notes": notes.thread(notes.of_result(at_hand)),
+        "may_note": review_set is not None and notes.may_write(request.user, project),
+        "note_length": notes.LENGTH,
         "siblings": at_hand.analysis.results.select_related("analyte", "column").order_by("analyte__order"),
         "sheet": sheet,
         "trouble": trouble,

@@ -13,6 +13,7 @@ from qc.review.standing import valid_signature
 DECIDED = "review.decided"
 UNDONE = "review.undone"
 ANSWERED = "review.flags_answered"
+NOTED = "review.noted"
 TAKEN_IN = "review.taken_in"
 SIGNED = "review.signed"
 REOPENED = "review.reopened"

@@ -9,7 +9,7 @@ from django.contrib.auth.models import User
 from labdata.access import actions
 from labdata.models import Well
 from qc.models import Decision, Flag, FlagAnswer, ReviewSet, SignOff, Verdict
-from qc.review import changes, figures, seal
+from qc.review import changes, figures, notes, seal
 from qc.review.columns import SEVERITIES, VERDICTS, Rows, as_columns, read_rows
 from qc.review.deciding import last_batch
 from qc.review.standing import Standing, flag_answers, flags_of, results_of, standing, valid_signature
@@ -49,6 +49,8 @@ def review_data(review_set: ReviewSet, user: User) -> dict[str, Any]:
         "people": _people(decided),
         "signature": signature(valid_signature(review_set)),
         "records": _records(review_set),
+        "notes": notes.told(review_set),
+        "may_note": notes.may_write(user, review_set.project),
         "history": _history(review_set),
     }
 

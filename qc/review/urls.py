@@ -2,7 +2,7 @@
 
 from django.urls import URLPattern, URLResolver, path
 
-from qc.review import outgoing, plain, views
+from qc.review import note_views, outgoing, plain, views
 
 urlpatterns: list[URLPattern | URLResolver] = [
     path("", views.review_sets, name="review_sets"),
@@ -12,6 +12,10 @@ urlpatterns: list[URLPattern | URLResolver] = [
     path("<int:pk>/plain/", plain.review_plain, name="review_plain"),
     path("<int:pk>/signatures/<int:signature>.pdf", outgoing.review_record, name="review_record"),
     path("<int:pk>/drawing/", outgoing.review_drawing, name="review_drawing"),
+    path("<int:pk>/notes/write/", note_views.review_note, name="review_note"),
+    path("<int:pk>/notes/result/<int:result>/", note_views.review_result_note, name="review_result_note"),
+    path("<int:pk>/notes/<int:note>.txt", note_views.review_question, name="review_question"),
+    path("<int:pk>/notes/questions.txt", note_views.review_questions, name="review_questions"),
     path("<int:pk>/decide/", views.review_decide, name="review_decide"),
     path("<int:pk>/accept/", views.review_accept, name="review_accept"),
     path("<int:pk>/undo/", views.review_undo, name="review_undo"),

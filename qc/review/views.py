@@ -18,7 +18,7 @@ from qc.review.signing import MEANING_LENGTH
 from qc.review.standing import flags_of, valid_signature
 from qc.review.worklist import work_list
 
-POSTS = ("decide", "accept", "undo", "answer", "sign", "reopen")
+POSTS = ("decide", "accept", "undo", "answer", "sign", "reopen", "note")
 
 
 @require_safe

@@ -2,14 +2,15 @@
 
 import { make, plural } from "./dom.js";
 import { evidence } from "./evidence.js";
+import { thread } from "./notes.js";
 import { load } from "./server.js";
 
 const WEIGHT = { "reject-candidate": 0, warn: 1, info: 2 };
 const SHOWN = 60;
 
 export class FlagPanel {
-  constructor(box, model, { selection, bar, send, address, mayDecide, table }) {
-    Object.assign(this, { box, model, selection, bar, send, address, mayDecide, table, open: new Set() });
+  constructor(box, model, { selection, bar, send, address, mayDecide, table, notes }) {
+    Object.assign(this, { box, model, selection, bar, send, address, mayDecide, table, notes, open: new Set(), talking: new Set() });
     this.update(model);
   }
 
@@ -19,7 +20,8 @@ export class FlagPanel {
     for (const flag of model.data.flags) groups.set(flag.rule, [...(groups.get(flag.rule) ?? []), flag]);
     const rank = (flags) => [weighty(flags).length ? 0 : 1, Math.min(...flags.map((flag) => WEIGHT[flag.severity])), -flags.length];
     const ordered = [...groups].sort(([, a], [, b]) => compare(rank(a), rank(b)));
-    this.box.replaceChildren(...(ordered.length ? ordered.map(([rule, flags]) => this.#group(rule, flags)) : [none()]));
+    const asked = model.data.notes.filter((note) => note.open).length;
+    this.box.replaceChildren(...(asked ? [make("p", {}, make("a", { href: `${this.notes}questions.txt`, download: true }, `${plural(asked, "open question")} to the laboratory, as a text`))] : []), ...(ordered.length ? ordered.map(([rule, flags]) => this.#group(rule, flags)) : [none()]));
   }
 
   #group(rule, flags) {
@@ -98,7 +100,7 @@ export class FlagPanel {
     if (!rows.length) tools.firstChild.remove();
     const more = make("details", { class: "more" }, make("summary", {}, "Evidence"));
     more.addEventListener("toggle", () => this.#evidence(more, flag), { once: true });
-    item.append(tools, more);
+    item.append(tools, more, thread(flag, this));
     return item;
   }
 

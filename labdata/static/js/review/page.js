@@ -101,7 +101,7 @@ class Page {
     this.filters = new Filters(root.querySelector("#filters"), this.model, this.table, this.selection);
     this.flags = new FlagPanel(part("flags"), this.model, {
       selection: this.selection, bar: this.bar, table: this.table, send: (name, body) => this.send(name, body),
-      address: (id) => `${config.flags}${id}/`, mayDecide: () => this.mayDecide(),
+      address: (id) => `${config.flags}${id}/`, notes: config.notes, mayDecide: () => this.mayDecide(),
     });
     this.signing = new SignPanel(part("standing"), this.model, { reasons, selection: this.selection, table: this.table, bar: this.bar, records: config.records });
     tabs(part("side"));
@@ -187,7 +187,7 @@ class Page {
   }
 }
 
-const DONE = { decide: "Decided.", accept: "Accepted everything without a flag.", undo: "Undone.", answer: "Answered.", sign: "Signed.", reopen: "Re-opened." };
+const DONE = { decide: "Decided.", accept: "Accepted everything without a flag.", undo: "Undone.", answer: "Answered.", sign: "Signed.", reopen: "Re-opened.", note: "Written." };
 
 function signNote({ may, signed, counts, own, ready }) {
   if (signed) return may.includes("reopen") ? "Re-open it, with a reason, if something must be decided anew." : "An approver can re-open it.";
