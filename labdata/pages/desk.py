@@ -24,10 +24,9 @@ from labdata.pages.uploads import COUNT_WORDS, IMPORTED, LEAVE_BLANK, find_uploa
 SHOWN_FINDINGS = 60
 INSTANT_CELLS = 200_000  # a file with more cells is read again only when the button says so, not at each change
 KEPT_BOOKS, KEPT_BYTES = 2, 4_000_000
-_looks: "dict[tuple[Any, ...], _Seen]" = {}  # the last look at a large file, for turning its pages
-_books: dict[
-    str, workbook.Workbook
-] = {}  # the files last looked at, so that a change of the mapping need not read again
+# The last look at a large file, for turning its pages; the files last looked at, so that a change need not read again.
+_looks: "dict[tuple[Any, ...], _Seen]" = {}
+_books: dict[str, workbook.Workbook] = {}
 
 
 @require_safe
