@@ -14,23 +14,25 @@ if TYPE_CHECKING:
 
 MEMORY_BYTES = 4 * 1024**3
 SECONDS = 300
+SMALL = (1024**3, 20)  # memory and time for a file that is not large itself
 
 
-def read_apart(name: str, content: bytes) -> "Workbook":
+def read_apart(name: str, content: bytes, memory: int | None = None, seconds: int | None = None) -> "Workbook":
     """The workbook as read by a child process. Raises UnreadableFile when it cannot be read within the limits."""
+    memory, seconds = memory or MEMORY_BYTES, seconds or SECONDS
     checkout = str(Path(__file__).resolve().parent.parent.parent)
     try:
         child = subprocess.run(
-            [sys.executable, "-m", "labdata.intake.apart", name],
+            [sys.executable, "-m", "labdata.intake.apart", name, str(memory), str(seconds)],
             input=content,
             capture_output=True,
-            timeout=SECONDS,
+            timeout=seconds,
             cwd=checkout,
             env={**os.environ, "PYTHONPATH": checkout},
             check=False,
         )
     except subprocess.TimeoutExpired:
-        raise _too_much(name, f"it took more than {SECONDS} s") from None
+        raise _too_much(name, f"it took more than {seconds} s") from None
     if child.returncode != 0:
         raise _too_much(name, f"the reader ended with status {child.returncode}")
     answer = pickle.loads(child.stdout)  # written by the child below, never by the file
@@ -47,14 +49,14 @@ def _too_much(name: str, why: str) -> UnreadableFile:
     )
 
 
-def main(name: str) -> int:
+def main(name: str, memory: int, seconds: int) -> int:
     """Read standard input, write the pickled workbook (or the refusal as a dict) to standard output."""
     import resource  # noqa: PLC0415
 
     from labdata.intake import workbook  # noqa: PLC0415
 
-    resource.setrlimit(resource.RLIMIT_AS, (MEMORY_BYTES, MEMORY_BYTES))
-    resource.setrlimit(resource.RLIMIT_CPU, (SECONDS, SECONDS))
+    resource.setrlimit(resource.RLIMIT_AS, (memory, memory))
+    resource.setrlimit(resource.RLIMIT_CPU, (seconds, seconds))
     try:
         answer: object = workbook.read_here(name, sys.stdin.buffer.read())
     except UnreadableFile as refusal:
@@ -64,4 +66,4 @@ def main(name: str) -> int:
 
 
 if __name__ == "__main__":
-    sys.exit(main(sys.argv[1]))
+    sys.exit(main(sys.argv[1], int(float(sys.argv[2])), int(float(sys.argv[3])) or 1))

@@ -29,6 +29,24 @@ _MAX_STYLES = 4096
 ROWS_BY_ROW = 400  # sheets up to so many rows may hold a sample a column, so formats are told by row too
 
 
+_FAR_COLUMN = re.compile(rb"""r=["'][A-Z]{3}\d""")
+_FAR_ROW = re.compile(rb"""r=["'][A-Z]{0,3}\d{6}""")
+_ADDRESS = re.compile(rb"""r=["']([A-Z]{0,3})(\d{1,7})["']""")
+
+
+def extent(xml: bytes) -> tuple[int, int, int]:
+    """(rows, columns, addresses) that a sheet's cells span; (0, 0, 0) for one that stays near its corner.
+
+    The fast reader holds the whole rectangle, so one cell in the last corner of a sheet would be enough to fill any memory.
+    """
+    if not _FAR_COLUMN.search(xml) and not _FAR_ROW.search(xml):
+        return 0, 0, 0
+    found = _ADDRESS.findall(xml)
+    rows = max(int(row) for _, row in found) if found else 0
+    columns = max((_index(name) + 1 for name in {name for name, _ in found} if name), default=1)
+    return rows, columns, len(found)
+
+
 def add_formats(archive: zipfile.ZipFile, sheets: "list[Sheet]") -> None:
     """Fill ``formats``, ``percent`` and ``faults`` of the sheets from the workbook's XML."""
     styles = _number_formats(archive)

@@ -1,11 +1,13 @@
 """A laboratory file as sheets of cells, whatever its kind. What it is, its bytes tell; its name does not matter."""
 
 import io
+import struct
 import zipfile
 import zlib
 from dataclasses import dataclass, field
 from datetime import date, datetime, time, timedelta
 from typing import Any
+from xml.etree import ElementTree
 
 from python_calamine import CalamineError, CalamineWorkbook, SheetVisibleEnum
 
@@ -18,6 +20,8 @@ MAX_UNPACKED = 1024 * 1024 * 1024
 MAX_RATIO = 300
 APART_BYTES = 128 * 1024 * 1024  # unpacked; what is larger is read in a child process
 MAX_CELLS = 40_000_000
+SPARSE_CELLS = 5_000_000  # a rectangle up to so large is read however empty it is
+SPARSE_RATIO = 20
 
 Cell = Any  # str, float, int, bool, date, datetime, time, timedelta; "" when empty
 
@@ -109,10 +113,11 @@ def cell_text(cell: Cell) -> str:
 def read(name: str, content: bytes) -> Workbook:
     """Every sheet of the file. Raises UnreadableFile naming the file and what is wrong with it."""
     _refuse_hopeless(name, content)
-    if content[:8] == _OLE and len(content) > APART_BYTES // 4:
-        return apart.read_apart(name, content)
-    if content.startswith(b"PK") and zipfile.is_zipfile(io.BytesIO(content)):
-        with zipfile.ZipFile(io.BytesIO(content)) as archive:
+    if content[:8] == _OLE:  # a few changed bytes make its reader ask for any amount of memory
+        roomy = len(content) > APART_BYTES // 4
+        return apart.read_apart(name, content) if roomy else apart.read_apart(name, content, *apart.SMALL)
+    if content.startswith(b"PK"):
+        with _archive(name, content) as archive:
             _refuse_bomb(name, content, archive.infolist())
             if sum(entry.file_size for entry in archive.infolist()) > APART_BYTES:
                 return apart.read_apart(name, content)
@@ -157,22 +162,21 @@ def _refuse_hopeless(name: str, content: bytes) -> None:
             )
 
 
-def _zipped(name: str, content: bytes) -> Workbook:
+def _archive(name: str, content: bytes) -> zipfile.ZipFile:
     try:
-        archive = zipfile.ZipFile(io.BytesIO(content))
-    except zipfile.BadZipFile:
+        return zipfile.ZipFile(io.BytesIO(content))
+    except (zipfile.BadZipFile, ValueError, OSError, NotImplementedError, struct.error):
         raise UnreadableFile(
             f"«{name}» is a damaged or incomplete workbook.", remedy="Send the file again.", file=name
         ) from None
-    with archive:
+
+
+def _zipped(name: str, content: bytes) -> Workbook:
+    with _archive(name, content) as archive:
         entries = archive.infolist()
         _refuse_bomb(name, content, entries)
         names = {entry.filename for entry in entries}
-        if (
-            any(entry.flag_bits & 1 for entry in entries)
-            or "EncryptedPackage" in names
-            or _encrypted_ods(archive, names)
-        ):
+        if any(entry.flag_bits & 1 for entry in entries) or "EncryptedPackage" in names:
             raise _encrypted(name)
         if not ({"xl/workbook.xml", "xl/workbook.bin", "content.xml"} & names):
             raise UnreadableFile(
@@ -184,12 +188,26 @@ def _zipped(name: str, content: bytes) -> Workbook:
                 remedy="Send the file again.",
                 file=name,
             )
+        if _encrypted_ods(archive, names):
+            raise _encrypted(name)
+        _refuse_entities(name, archive)
+        _refuse_sparse(name, archive, names)
         book = _calamine(name, content, "ods" if "content.xml" in names else "xlsx")
+        _add_left_out(name, archive, book, names)
+    return book
+
+
+def _add_left_out(name: str, archive: zipfile.ZipFile, book: Workbook, names: set[str]) -> None:
+    """What the fast reader leaves out, from the XML itself."""
+    try:
         if book.kind == "ods":
             odsfaults.add_faults(archive, book.sheets)
         if "xl/workbook.xml" in names:
             sheetxml.add_formats(archive, book.sheets)
-    return book
+    except (ElementTree.ParseError, KeyError, ValueError) as trouble:
+        raise UnreadableFile(
+            f"«{name}» is a damaged or incomplete workbook ({trouble}).", remedy="Send the file again.", file=name
+        ) from trouble
 
 
 def _refuse_bomb(name: str, content: bytes, entries: list[zipfile.ZipInfo]) -> None:
@@ -202,11 +220,53 @@ def _refuse_bomb(name: str, content: bytes, entries: list[zipfile.ZipInfo]) -> N
         )
 
 
+def _refuse_entities(name: str, archive: zipfile.ZipFile) -> None:
+    """Refuse parts that declare entities: no spreadsheet program writes any, and they can unfold without end."""
+    for entry in archive.infolist():
+        if entry.filename.endswith((".xml", ".rels")):
+            with archive.open(entry) as stream:
+                head = stream.read(4096).replace(b"\x00", b"").upper()
+            if b"<!DOCTYPE" in head or b"<!ENTITY" in head:
+                raise UnreadableFile(
+                    f"«{name}» declares XML entities ({entry.filename}); no workbook needs any, and it is not read.",
+                    remedy="Save it again with a spreadsheet program.",
+                    file=name,
+                )
+
+
+def _refuse_sparse(name: str, archive: zipfile.ZipFile, names: set[str]) -> None:
+    """Refuse a sheet whose few cells lie so far apart that the rectangle around them would fill the memory."""
+    parts = [part for part in names if part.startswith("xl/worksheets/") and part.endswith(".xml")]
+    try:
+        spans = [sheetxml.extent(archive.read(part)) for part in sorted(parts)]
+        spans += [odsfaults.extent(archive.read("content.xml"))] if "content.xml" in names else []
+    except (ElementTree.ParseError, ValueError) as trouble:
+        raise UnreadableFile(
+            f"«{name}» is a damaged or incomplete workbook ({trouble}).", remedy="Send the file again.", file=name
+        ) from trouble
+    for rows, columns, cells in spans:
+        if rows * columns > max(SPARSE_CELLS, SPARSE_RATIO * cells):
+            raise UnreadableFile(
+                f"A sheet of «{name}» spans {rows} rows and {columns} columns for {cells} cells; it is not read.",
+                remedy="Delete the rows and columns outside the table and save it again.",
+                file=name,
+            )
+
+
 def _damaged(archive: zipfile.ZipFile) -> str:
     """The first part that does not unpack to its declared size and checksum, or ""."""
     try:
         return archive.testzip() or ""
-    except (zipfile.BadZipFile, EOFError, zlib.error, OSError, NotImplementedError):
+    except (
+        zipfile.BadZipFile,
+        EOFError,
+        zlib.error,
+        OSError,
+        NotImplementedError,
+        ValueError,
+        RuntimeError,
+        struct.error,
+    ):
         return "a part"
 
 
@@ -229,7 +289,9 @@ def _calamine(name: str, content: bytes, kind: str) -> Workbook:
     try:
         book = CalamineWorkbook.from_filelike(io.BytesIO(content))
         return _sheets(name, book, kind)
-    except (CalamineError, OSError, ValueError) as trouble:
+    except BaseException as trouble:
+        if not isinstance(trouble, (CalamineError, OSError, ValueError)) and type(trouble).__name__ != "PanicException":
+            raise
         if "password" in str(trouble).lower() or "encrypt" in str(trouble).lower():
             raise _encrypted(name) from trouble
         raise UnreadableFile(

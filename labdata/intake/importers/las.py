@@ -13,6 +13,7 @@ from labdata.intake.errors import UnreadableFile
 from labdata.intake.findings import Findings
 from labdata.intake.importers.records import Curve, WellKey
 from labdata.intake.plaintext import plain_lines
+from labdata.intake.rows import DEEPEST_M
 from labdata.models import CurveQuantity, DatumKind
 
 MAX_BYTES = 60_000_000
@@ -105,10 +106,15 @@ class LogFile:
                 f"The depth curve «{index.original_mnemonic}» of «{self.name}» has no unit of length.", ["m", "ft"],
                 value=str(index.unit or ""),
             ) or ""  # fmt: skip
-        depths = np.asarray(index.data, dtype=float) * (units.FOOT_M if unit == "ft" else 1.0)
-        if not np.isfinite(depths).all():
+        depths = np.asarray(index.data)
+        depths = (
+            depths.astype(float) * (units.FOOT_M if unit == "ft" else 1.0) if depths.dtype.kind in "fiu" else depths
+        )
+        if depths.dtype.kind != "f" or not np.isfinite(depths).all() or depths.min() < -100 or depths.max() > DEEPEST_M:
             findings.error(
-                "depth_unreadable", f"The depth curve of «{self.name}» has gaps.", remedy="Send the file again."
+                "depth_unreadable",
+                f"The depth curve of «{self.name}» has gaps, text or depths that cannot be.",
+                remedy="Send the file again.",
             )
             return []
         made = [curve for item in self.las.curves[1:] if (curve := self._curve(item, depths, unit, well, findings))]
