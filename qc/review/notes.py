@@ -80,7 +80,7 @@ def _checked(text: str, kind: str) -> str:
 def _question(review_set: ReviewSet, answers: int | None) -> Note:
     """The open question that is answered."""
     found = Note.objects.select_for_update(of=("self",)).filter(
-        review_set=review_set, kind=NoteKind.QUESTION, pk=answers
+        review_set=review_set, kind=NoteKind.QUESTION, pk=answers or 0
     )
     question = found.first()
     if question is None:
@@ -97,7 +97,7 @@ def _about(review_set: ReviewSet, result_id: int | None, flag: Mark | None) -> t
         if raised is None:
             raise NotFound(f"{review_set.well} has no such flag of «{flag[0]}».", remedy="Load the review page again.")
         return raised.result, *flag
-    result = Result.objects.filter(analysis__review_item__review_set=review_set, pk=result_id).first()
+    result = Result.objects.filter(analysis__review_item__review_set=review_set, pk=result_id or 0).first()
     if result is None:
         raise NotFound(f"{review_set} has no result {result_id}.", remedy="Load the page again.")
     return result, "", ""
@@ -194,10 +194,10 @@ def _facts(result: Result) -> list[str]:
     lines = [f"   Report: {report}, file {report.source_file.name}"]
     if sample is not None:
         run = f", run {analysis.replicate}" if analysis.replicate > 1 else ""
+        reported = f" (as reported: {reported_depth(sample)})" if sample.top_reported else ""
         lines += [
-            f"   Sample: {sample.label or 'no label'}{run}",
-            f"   Depth: {interval(sample)} m measured depth (as reported: {reported_depth(sample)})",
-        ]
+            f"   Sample: {sample.label or 'no label'}{run}", f"   Depth: {interval(sample)} m measured depth{reported}",
+        ]  # fmt: skip
     sheet = f"{column.table.sheet}!" if column.table.sheet else ""
     return [
         *lines, f"   Value of: {result.analyte} ({analysis.method})",
