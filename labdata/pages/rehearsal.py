@@ -29,7 +29,7 @@ class RehearsalForm(forms.Form):
 def rehearse(request: HttpRequest, slug: str) -> HttpResponse:
     """The last rehearsal; a POST asks for a new one."""
     project = open_project(request, slug, Action.RUN_QC if request.method == "POST" else Action.VIEW)
-    form = RehearsalForm(request.POST or None)
+    form = RehearsalForm(request.POST if request.method == "POST" else None)
     if request.method == "POST" and form.is_valid():
         job = start_rehearsal(project, person(request), seed=form.cleaned_data["seed"])
         messages.success(request, "The rehearsal is on its way; it takes a minute or two.")

@@ -66,7 +66,7 @@ def doubted(found: Flagged) -> set[int]:
     made = {
         sample for sample, marks in found.samples.items() if any(rule not in LIMITS_OF_READING for rule, _ in marks)
     }
-    for mark, (_, samples) in found.sets.items():
-        if FAMILY.get(mark[0]) in {"contamination", "depth"}:
+    for mark, (weight, samples) in found.sets.items():
+        if FAMILY.get(mark[0]) == "contamination" or weight == WEIGHT[REJECT]:
             made |= samples
     return made
