@@ -3,10 +3,11 @@
 from collections.abc import Iterable
 from typing import Any
 
-from labdata import audit
+from django.db.models import Q
+
+from labdata import audit, fixity
 from labdata.intake import layouts
 from labdata.intake import services as intake
-from labdata.intake.fields import field_types
 from labdata.intake.prepared import Prepared, PreparedTable
 from labdata.intake.rows import Row
 from labdata.models import (
@@ -241,12 +242,13 @@ class _Storing:
                 "number": report.number, "version": report.version, "file": upload.file_name, "sha256": prepared.sha256,
                 "supersedes": report.supersedes_id, "counts": self.counts, "answers": upload.answers,
                 "difference": {key: value for key, value in report.difference.items() if key != "values"},
+                "facts": fixity.facts("results of report", report.pk) if self.counts["results"] else {},
             },
         )  # fmt: skip
 
 
 def _analytes(project: Project) -> dict[str, int]:
     """Analyte code -> id; the project's own win over those that every project has."""
-    pairs = Analyte.objects.filter(code__in=field_types()).values_list("project_id", "code", "pk")
+    pairs = Analyte.objects.filter(Q(project=None) | Q(project=project)).values_list("project_id", "code", "pk")
     found = {code: pk for owner, code, pk in pairs if owner is None}
     return found | {code: pk for owner, code, pk in pairs if owner == project.pk}

@@ -9,7 +9,7 @@ from django.db import transaction
 from django.db.models import Max
 from django.utils import timezone
 
-from labdata import audit
+from labdata import audit, fixity
 from labdata.access import Action, require
 from labdata.errors import Conflict, InvalidInput, NothingSigned
 from labdata.jobs import JobContext, enqueue, run_here
@@ -128,7 +128,10 @@ def _insert(user: User, title: str, selection: Selection, described: dict[str, A
         analysis_count=described["counts"]["analyses"], result_count=described["counts"]["results"],
     )  # fmt: skip
     made.sign_offs.set([signature.sign_off for signature in selection.signatures.values()])
-    after = {"number": number, "title": title, "data_sha256": made.data_sha256, "manifest_sha256": made.manifest_sha256}
+    after = {
+        "number": number, "title": title, "data_sha256": made.data_sha256, "manifest_sha256": made.manifest_sha256,
+        "facts": fixity.facts("release", made.pk),
+    }  # fmt: skip
     audit.record("release.made", made, actor=user, project=project, after=after)
     return made
 

@@ -8,6 +8,7 @@ from uuid import UUID, uuid4
 
 from django.db.models import Max
 
+from labdata import fixity
 from labdata.models import Analysis, Result, Well
 from labdata.registry import bulk
 from qc.models import Decision, ReviewItem, ReviewSet, ReviewSetState, Verdict
@@ -42,9 +43,11 @@ def take_in(landed: "Landed") -> None:
     bulk.insert(
         ReviewItem, ("review_set_id", "analysis_id"), ((place.pk, analysis) for analysis, place in places.items())
     )
-    carried = _carry(landed.unchanged, places)
+    batch = uuid4()
+    carried = _carry(landed.unchanged, places, batch)
     for review_set, count in _touched(places, landed.withdrawn).items():
-        _settle(review_set, count, carried.get(review_set.pk, 0), landed)
+        kept = fixity.facts("decisions", review_set.pk, batch) if carried[review_set.pk] else {}
+        _settle(review_set, count, carried[review_set.pk], landed, kept)
 
 
 def _places(wells: dict[int, int], replaced: dict[int, int]) -> dict[int, ReviewSet]:
@@ -80,9 +83,9 @@ def _open_set(well_id: int) -> ReviewSet:
     return ReviewSet.objects.create(project=well.project, well=well, number=last + 1)
 
 
-def _carry(unchanged: Iterable[tuple[int, int]], places: dict[int, ReviewSet]) -> dict[int, int]:
+def _carry(unchanged: Iterable[tuple[int, int]], places: dict[int, ReviewSet], batch: UUID) -> Counter[int]:
     """Carry standing verdicts to the results that repeat the values; returns how many per review set."""
-    batch, counts = uuid4(), Counter[int]()
+    counts = Counter[int]()
     for some in _chunks(unchanged):
         rows = _carried(dict(some), places, batch)
         Decision.objects.bulk_create(rows, batch_size=BATCH_SIZE)
@@ -122,12 +125,14 @@ def _chunks(things: Iterable[T]) -> Iterator[list[T]]:
         yield some
 
 
-def _settle(review_set: ReviewSet, arrived: int, carried: int, landed: "Landed") -> None:
+def _settle(review_set: ReviewSet, arrived: int, carried: int, landed: "Landed", facts: dict[str, str]) -> None:
     """Raise the version, leave the record, and re-open a signed set that no longer says what was signed."""
     held = changes.lock(review_set)
     changes.bump(held)
     what = f"brought {arrived} analyses of report {landed.report}"
-    changes.log(changes.TAKEN_IN, held, None, what, report=str(landed.report), arrived=arrived, carried=carried)
+    changes.log(
+        changes.TAKEN_IN, held, None, what, report=str(landed.report), arrived=arrived, carried=carried, facts=facts
+    )
     signature = valid_signature(held)
     if signature and not holds(signature):
         break_signature(held, actor=None, reason=f"Report {landed.report} changed, added or withdrew signed values.")

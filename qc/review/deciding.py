@@ -1,6 +1,5 @@
 """Deciding on results and answering flags. One call is one transaction and one audit record."""
 
-import hashlib
 from collections import Counter
 from collections.abc import Iterable, Sequence
 from uuid import UUID, uuid4
@@ -8,8 +7,8 @@ from uuid import UUID, uuid4
 from django.contrib.auth.models import User
 from django.db import transaction
 
+from labdata import fixity
 from labdata.access import Action, require
-from labdata.audit import canonical
 from labdata.errors import Conflict, InvalidInput, NotAllowed, NotFound
 from labdata.models import AuditEntry, Result
 from qc.models import Decision, FlagAnswer, ReasonCode, ReviewSet, Verdict
@@ -226,7 +225,7 @@ def _record(
         action, review_set, user, "; ".join(filter(None, [also, _words(action, verdicts, choices)])),
         reason=_reason(choices), batch=str(batch), verdicts=dict(verdicts),
         decisions=rows if len(rows) <= LISTED else None,
-        decisions_sha256=hashlib.sha256(canonical(rows).encode()).hexdigest(), **more,
+        facts=fixity.facts("decisions", review_set.pk, batch), **more,
     )  # fmt: skip
 
 

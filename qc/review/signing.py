@@ -6,7 +6,7 @@ from django.contrib.auth.models import User
 from django.db import transaction
 from django.utils import timezone
 
-from labdata import audit
+from labdata import audit, fixity
 from labdata.access import Action, require
 from labdata.errors import Conflict, InvalidInput, OpenResults, SelfSignOff, SigningLocked, WrongPassword
 from labdata.models import AuditEntry, Project
@@ -54,6 +54,7 @@ def _sign(user: User, review_set: ReviewSet, meaning: str, expected_version: int
     changes.log(
         changes.SIGNED, held, user, f"signed {counts['results']} results", sign_off=record.pk,
         content_sha256=record.content_sha256, counts=counts, meaning=meaning,
+        facts=fixity.facts("signature", record.pk),
     )  # fmt: skip
     return record
 
@@ -151,5 +152,8 @@ def break_signature(review_set: ReviewSet, *, actor: User | None, reason: str) -
         raise Conflict(f"{review_set} is not signed.")
     made = Reopening.objects.create(sign_off=signature, reopened_by=actor, reason=reason)
     changes.bump(review_set, ReviewSetState.OPEN)
-    changes.log(changes.REOPENED, review_set, actor, "re-opened it", reason=reason, sign_off=signature.pk)
+    changes.log(
+        changes.REOPENED, review_set, actor, "re-opened it", reason=reason, sign_off=signature.pk,
+        facts=fixity.facts("re-opening of signature", signature.pk),
+    )  # fmt: skip
     return made

@@ -70,8 +70,9 @@ def test_the_catalogue_is_whole():
     for code, analyte in listed["analytes"].items():
         assert set(analyte.get("inputs", [])) <= codes - {code}
         assert analyte.get("low", 0) < analyte.get("high", 1e9)
-    orders = [analyte["order"] for analyte in listed["analytes"].values()]
-    assert len(set(orders)) == len(orders)
+    assert all(
+        analyte["order"] > 0 for analyte in listed["analytes"].values()
+    )  # a group may share one: the code decides
 
 
 @pytest.mark.parametrize(

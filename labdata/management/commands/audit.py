@@ -4,7 +4,7 @@ from typing import Any
 
 from django.db import connection
 
-from labdata import audit, triggers
+from labdata import audit, fixity, triggers
 from labdata.errors import AuditBroken
 from labdata.management.commands._base import ServiceCommand
 
@@ -20,7 +20,7 @@ class Command(ServiceCommand):
                 remedy="Find out who removed them; `manage.py migrate` makes them again.",
                 triggers=gone,
             )
-        return answer
+        return {**answer, "facts": fixity.verify()}
 
     def show(self, answer: dict[str, Any]) -> None:
         self.stdout.write(f"The audit trail holds: {answer['entries']} entries, head {answer['head']}.")
