@@ -60,6 +60,7 @@ def table_of(
     survey: Sequence[Sequence[Any]] = (),
     curves: Sequence[Sequence[Any]] = (),
     controls: Sequence[Mapping[str, Any]] = (),
+    headers: Mapping[tuple[int, str], str] | None = None,
 ) -> Table:
     """The table of the records; ``wells`` in the order of their numbers, the others as rows of ``TOPS``, ``CORES`` and so on.
 
@@ -84,8 +85,15 @@ def table_of(
     things = {"tops": (tops, TOPS), "cores": (cores, CORES), "muds": (muds, MUDS), "shoes": (shoes, SHOES),
               "survey": (survey, SURVEY), "curves": (curves, CURVES)}  # fmt: skip
     around = {name: _things(*given) for name, given in things.items()}
-    held = {"panels": _panels(listed), "controls": controls_of(list(controls))}
+    panels = _panels(listed)
+    named = {(number, _place(panels, code)): text for (number, code), text in (headers or {}).items()}
+    held = {"panels": panels, "controls": controls_of(list(controls)), "headers": named}
     return Table(frame(columns, len(listed)), known, **around, **held)
+
+
+def _place(panels: Mapping[str, pd.DataFrame], code: str) -> int:
+    """The column in which an analyte stands."""
+    return next(int(frame[f"{code}_col"].max()) for frame in panels.values() if f"{code}_col" in frame)
 
 
 def _panels(records: list[dict[str, Any]]) -> dict[str, pd.DataFrame]:

@@ -18,13 +18,14 @@ from qc.rules.rule import Answer
 from qc.rules.spans import num, word
 
 UNITS = {
-    "TOC": "wt%", "TIC": "wt%", "TC": "wt%", "TS": "wt%", "CARB": "wt%", "MINC": "wt%", "S1": "mg/g", "S2": "mg/g", "S3": "mg/g",
+    "TOC": "wt%", "TIC": "wt%", "TC": "wt%", "CARB": "wt%", "MINC": "wt%", "S1": "mg/g", "S2": "mg/g", "S3": "mg/g",
     "TMAX": "degC", "HI": "mg/g TOC", "OI": "mg/g TOC", "PI": "fraction", "OSI": "mg/g TOC", "S2S3": "ratio",
     "GP": "mg/g", "PC": "wt%", "RC": "wt%", "RO": "%", "RO_SD": "%", "RO_N": "", "RO_MIN": "%", "RO_MAX": "%",
     "ALGINITE": "%", "SIDERITE": "wt%", "ILLITE": "wt%",
     "TOC_CARBON": "wt%",  # TOC of the separate carbon analysis of the same sample
     "ALIQUOT": "mg",  # mass pyrolysed
     "GR": "API",  # of core
+    "TS": "wt%",
 }  # fmt: skip
 ANALYTES = tuple(UNITS)
 CORE_KINDS = frozenset({"core", "plug", "sidewall"})
@@ -59,7 +60,8 @@ class Table:
     curves: pd.DataFrame = field(default_factory=lambda: no_things(*CURVES))
     answers: Mapping[str, Answer] = field(default_factory=dict)
     panels: Mapping[str, pd.DataFrame] = field(default_factory=dict)
-    controls: pd.DataFrame = field(default_factory=lambda: no_controls())
+    controls: pd.DataFrame = field(default_factory=lambda: controls_of([]))
+    headers: Mapping[tuple[int, int], str] = field(default_factory=dict)
 
     def of(self, *methods: str) -> pd.DataFrame:
         """Rows of these methods, index kept."""

@@ -3,6 +3,7 @@
 from collections.abc import Iterable, Mapping, Sequence
 from typing import Any
 
+from labdata.intake.fields import catalogue
 from labdata.models import (
     Analysis,
     Analyte,
@@ -82,7 +83,8 @@ def _table(project: Project, number: str, method: str) -> SourceTable:
 def _columns(table: SourceTable, records: list[dict[str, Any]]) -> dict[str, SourceColumn]:
     """One column a code; decimals are the most that a cell shows."""
     made = {}
-    for place, code in enumerate(ANALYTES, start=1):
+    others = sorted({code for record in records for code in record if code in catalogue()["analytes"]} - set(ANALYTES))
+    for place, code in enumerate((*ANALYTES, *others), start=1):
         seen = [cell[2] for record in records if (cell := read(record.get(code)))]
         if seen:
             made[code], _ = SourceColumn.objects.get_or_create(
