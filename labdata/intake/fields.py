@@ -1,10 +1,16 @@
 """Field codes that columns may have: the analytes of analytes.toml and the identity fields of synonyms.toml."""
 
 import tomllib
+from collections.abc import Callable, Iterator
+from contextlib import contextmanager
+from contextvars import ContextVar
 from dataclasses import dataclass, field
-from functools import cache
+from functools import cache, lru_cache, wraps
 from pathlib import Path
-from typing import Any
+from typing import Any, ParamSpec, TypeVar
+
+P = ParamSpec("P")
+T = TypeVar("T")
 
 ANALYTES = Path(__file__).resolve().parent.parent / "analytes.toml"
 SYNONYMS = Path(__file__).resolve().parent / "synonyms.toml"
@@ -27,7 +33,7 @@ class FieldType:
     low: float | None = None
     high: float | None = None
     names: tuple[str, ...] = ()
-    words: dict[str, str] = field(default_factory=dict)
+    words: dict[str, str] = field(default_factory=dict, compare=False)
 
     @property
     def is_analyte(self) -> bool:
@@ -46,9 +52,40 @@ def synonyms() -> dict[str, Any]:
     return tomllib.loads(SYNONYMS.read_text(encoding="utf-8"))
 
 
-@cache
+Own = tuple[FieldType, ...]
+_own: ContextVar[Own] = ContextVar("own", default=())
+
+
+@contextmanager
+def with_own(own: Own) -> Iterator[None]:
+    """Within this block the fields are those of a project: every project's, and its own analytes."""
+    token = _own.set(own)
+    try:
+        yield
+    finally:
+        _own.reset(token)
+
+
+def by_project(maxsize: int | None = None) -> Callable[[Callable[P, T]], Callable[P, T]]:
+    """A cache whose answers differ from project to project, as their own analytes do."""
+
+    def decorate(function: Callable[P, T]) -> Callable[P, T]:
+        @lru_cache(maxsize=maxsize)
+        def kept(own: Own, *args: P.args, **kwargs: P.kwargs) -> T:
+            return function(*args, **kwargs)
+
+        @wraps(function)
+        def asked(*args: P.args, **kwargs: P.kwargs) -> T:
+            return kept(_own.get(), *args, **kwargs)  # type: ignore[arg-type]  # what is asked is hashable
+
+        return asked
+
+    return decorate
+
+
+@by_project(maxsize=64)
 def field_types() -> dict[str, FieldType]:
-    """Every field code with its type."""
+    """Every field code with its type; a project's own analytes win over those that every project has."""
     analytes, names = catalogue()["analytes"], synonyms()["names"]
     made = {
         code: FieldType(
@@ -57,7 +94,7 @@ def field_types() -> dict[str, FieldType]:
         for code, entry in analytes.items()
     }
     made |= {code: FieldType(code, names=tuple(names.get(code, ()))) for code in IDENTITY}
-    return made
+    return made | {one.code: one for one in _own.get()}
 
 
 @cache

@@ -3,12 +3,12 @@
 import re
 import unicodedata
 from dataclasses import dataclass
-from functools import cache, lru_cache
+from functools import cache
 
 from rapidfuzz import fuzz, process
 
 from labdata.intake import units
-from labdata.intake.fields import element_symbols, field_types, synonyms
+from labdata.intake.fields import by_project, element_symbols, field_types, synonyms
 
 NAME = "NAME"  # a header that says only "Name" or "ID": well or sample, told by its values
 _NAME_WORDS = frozenset({"name", "id", "no", "nr", "number", "code"})
@@ -36,6 +36,7 @@ def fold(text: str) -> str:
     """Letters and digits only (and / + * %), no accents, no case: ``T max`` and ``Tmax`` are ``tmax``."""
     plain = text.casefold().replace("δ", "d").replace("Δ", "d").replace("æ", "ae").replace("ø", "o").replace("ß", "ss")
     plain = unicodedata.normalize("NFKD", plain).replace("⁄", "/")
+    plain = re.sub(r"(?<=s\d)['′’]", "prime", plain)  # S3' is another peak than S3
     return re.sub(r"[^a-z0-9/+*%]", "", plain)
 
 
@@ -49,7 +50,7 @@ def _formulas() -> dict[str, str]:
     return {text: code for code, texts in synonyms()["formulas"].items() for text in texts}
 
 
-@cache
+@by_project(maxsize=64)
 def _names() -> dict[str, str]:
     """Folded header name -> field code. Listed synonyms win over codes and full names."""
     known: dict[str, str] = {}
@@ -87,7 +88,7 @@ def _full_name(code: str) -> str:
     return str(catalogue()["analytes"].get(code, {}).get("name", ""))
 
 
-@lru_cache(maxsize=20_000)
+@by_project(maxsize=20_000)
 def recognise(header: str, many_elements: bool = False) -> Guess | None:
     """The best reading of one header text, or None. ``many_elements``: the row has several element symbols."""
     text = " ".join(header.replace("_", " ").split())
@@ -199,7 +200,7 @@ def _element(base: str, unit: str, many_elements: bool) -> str:
     return ""
 
 
-@lru_cache(maxsize=20_000)
+@by_project(maxsize=20_000)
 def _with_words(base: str, unit: str, unit_text: str, words: tuple[str, ...]) -> Guess | None:
     """A code with a laboratory's own word before or after it: ``ABC TOC``, ``TC_abc``."""
     tokens = re.sub(r"(?<=\w)-(?=\w\w\w)", " ", base).split()

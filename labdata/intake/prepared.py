@@ -156,6 +156,6 @@ class Prepared:
         """The file's entry of the outside contract."""
         return {
             "file": self.file_name, "sha256": self.sha256, "outcome": str(self.outcome), "upload": upload, "report": report,
-            "seconds": round(self.seconds, 3), "tables": [table.as_dict() for table in (*self.tables, *self.records.tables)], "counts": counts,
+            "seconds": round(self.seconds, 3), "tables": [*(table.as_dict() for table in self.tables), *(table.as_dict() for table in self.records.tables)], "counts": counts,
             "findings": [finding.as_dict() for finding in self.findings.ordered()],
         }  # fmt: skip

@@ -8,6 +8,7 @@ from labdata.intake import values, workbook
 from labdata.intake.columns import Column, Mapping, map_columns
 from labdata.intake.corrections import Corrections, Said, add_heads
 from labdata.intake.errors import UnreadableFile
+from labdata.intake.fields import FieldType, with_own
 from labdata.intake.findings import Findings
 from labdata.intake.importers.taking import RecordReader, settle
 from labdata.intake.layouts import Memory
@@ -23,7 +24,7 @@ from labdata.intake.unitchoice import choose_units
 from labdata.intake.versions import settle_version
 from labdata.intake.wellhead import well_details
 from labdata.intake.workbook import Sheet, address
-from labdata.models import Project
+from labdata.models import Analyte, Project
 
 Tick = Callable[[str], None]
 OWN_LAYOUTS = (LAS, CORE_TEXT, TOPS_TEXT)
@@ -52,6 +53,17 @@ class Request:
 
 def prepare_file(request: Request, tick: Tick) -> Prepared:
     """Read and match one file outside any transaction. Whatever is wrong with it ends up in the findings."""
+    with with_own(own_fields(request.project)):
+        return _prepare(request, tick)
+
+
+def own_fields(project: Project) -> tuple[FieldType, ...]:
+    """The project's own analytes as fields, found in headers by their code and their name."""
+    own = Analyte.objects.filter(project=project.pk).select_related("method").order_by("code") if project.pk else []
+    return tuple(FieldType(a.code, a.method.code, a.unit, a.low, a.high, (a.code, a.name)) for a in own)
+
+
+def _prepare(request: Request, tick: Tick) -> Prepared:
     started = time.perf_counter()
     made = Prepared(request.project, request.name, request.sha256, Findings(dict(request.answers)))
     try:

@@ -14,7 +14,7 @@ from labdata.intake.workbook import Cell, Sheet, cell_text
 MAX_FINDINGS_A_COLUMN = 300
 # Quantities that have no detection limit: "n.d." can only mean "not determined" there.
 NO_LIMIT = frozenset({
-    "TMAX", "HI", "OI", "PI", "OSI", "S2S3", "RO", "RO_SD", "RO_N", "RO_MIN", "RO_MAX", "D13C_ORG", "D13C_CARB", "D18O_CARB", "D34S",
+    "TMAX", "TPEAK", "OICO", "HI", "OI", "PI", "OSI", "S2S3", "RO", "RO_SD", "RO_N", "RO_MIN", "RO_MAX", "D13C_ORG", "D13C_CARB", "D18O_CARB", "D34S",
     "PR_PH", "PR_NC17", "PH_NC18", "CPI", "OEP", "RHOG", "RHOB", "PHI", "KAIR", "KLINK", "SW", "SO", "SG", "GR",
 })  # fmt: skip
 

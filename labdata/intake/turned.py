@@ -56,7 +56,7 @@ def _labels(sheet: Sheet, column: int) -> dict[int, Guess]:
         guess = recognise(text) if text and not looks_numeric(text) else None
         if guess is None and column + 1 < len(row) and units.parse(cell_text(row[column + 1])):
             guess = recognise(f"{text} ({cell_text(row[column + 1])})") if text else None
-        if guess is not None and sum(1 for cell in row[column + 1 :] if cell_text(cell)):
+        if guess is not None and any(cell_text(cell) for cell in row[column + 1 :]):
             found[at] = guess
     return found
 
@@ -66,7 +66,7 @@ def _worth(labels: dict[int, Guess]) -> float:
     fields = {guess.field: guess.confidence for guess in labels.values() if guess.field != NAME}
     if len(fields) < 2 or not any(field_types()[code].is_analyte for code in fields):
         return 0.0
-    places = _PLACES & set(fields) or any(guess.field == NAME for guess in labels.values())
+    places = bool(_PLACES & set(fields)) or any(guess.field == NAME for guess in labels.values())
     return sum(fields.values()) if places else 0.0
 
 

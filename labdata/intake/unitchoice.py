@@ -12,7 +12,7 @@ from labdata.intake.tables import Table
 
 # Fields that every laboratory reports in one unit; a header without a unit means that one.
 ONE_UNIT = frozenset({
-    "S1", "S2", "S3", "GP", "HI", "OI", "OSI", "S2S3", "TMAX", "RO", "RO_SD", "RO_N", "RO_MIN", "RO_MAX", "KAIR", "KLINK", "PR_PH", "PR_NC17",
+    "S1", "S2", "S3", "S3CO", "S3P", "S3COP", "S4CO", "S4CO2", "S5", "TPEAK", "OICO", "GP", "HI", "OI", "OSI", "S2S3", "TMAX", "RO", "RO_SD", "RO_N", "RO_MIN", "RO_MAX", "KAIR", "KLINK", "PR_PH", "PR_NC17",
     "PH_NC18", "CPI", "OEP", "D13C_ORG", "D13C_CARB", "D18O_CARB", "D34S", "GR",
 })  # fmt: skip
 PERCENT_OR_FRACTION = frozenset({*CARBON, "PC", "RC", "MINC", "PHI", "SW", "SO", "SG", "PI"})
@@ -99,6 +99,11 @@ def _not_convertible(table: Table, column: Column, findings: Findings, canonical
 def _told_by_numbers(column: Column, mapping: Mapping, cells: dict[int, Cells]) -> bool:
     """True when the field or the numbers leave no doubt about the unit; the reason is kept with the column."""
     kind = field_types()[column.field]
+    said = {units.fold(text) for text in (column.unit_text, *column.words)}
+    if not kind.unit or units.fold(kind.unit) in said:
+        return _settle(column, kind.unit, "the analyte has none" if not kind.unit else "the header says so")
+    if len(units.convertible(kind.unit)) == 1 and column.field not in ONE_UNIT:
+        return _settle(column, kind.unit, f"{column.field} has no other unit than {kind.unit}")
     if column.field in ONE_UNIT:
         column.unit = kind.unit
         column.confidence = min(column.confidence, 0.9)

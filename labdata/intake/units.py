@@ -102,6 +102,8 @@ def _bare(folded: str) -> str:
 
 def factor(reported: str, canonical: str) -> float | None:
     """What a number in ``reported`` is multiplied by to be in ``canonical``; None when no factor leads there."""
+    if reported == canonical and reported:
+        return 1.0
     return _FACTORS.get(canonical, {}).get(reported)
 
 

@@ -90,9 +90,9 @@ def _curve(curve: Curve, report: Report, well: int) -> None:
 
 def _complete(prepared: Prepared, stored: Stored) -> None:
     """Fill in what held wells lack; what they have is never overwritten."""
-    plans = {id(plan): plan for plan in prepared.wells.values() if plan.completions}
-    for plan in plans.values():
-        well = Well.objects.select_for_update().get(pk=plan.pk)
+    plans = {plan.pk: plan for plan in prepared.wells.values() if plan.completions and plan.pk is not None}
+    for pk, plan in plans.items():
+        well = Well.objects.select_for_update().get(pk=pk)
         lacking = {name: value for name, value in plan.completions.items() if getattr(well, name) in {None, ""}}
         if lacking:
             for name, value in lacking.items():

@@ -155,7 +155,7 @@ def _tell_plan(plan: WellPlan, facts: dict[str, Any], made: "Prepared", director
         if now in {None, ""}:
             plan.completions.setdefault(name, value)
         elif now != value and not (isinstance(value, float) and abs(now - value) < 0.005):
-            label = Well._meta.get_field(name).verbose_name
+            label = getattr(Well._meta.get_field(name), "verbose_name", name)
             made.findings.warning(
                 "well_differs", f"The file gives {label} of «{held.name}» as {value}; {now} is held and stays.",
                 id=f"well_differs:{held.pk}:{name}", value=str(value), remedy="Correct the well if the file is right.",

@@ -52,7 +52,8 @@ def _measured(tvd: float, survey: Survey, well: WellKey, findings: Findings, she
         found = along(tvd, survey)
         if found is not None:
             return found
-        return _beyond(tvd, well, findings, sheet)
+        _beyond(tvd, well, findings, sheet)
+        return None
     id_ = f"vertical:{well[0] or well[1]}"
     if any(finding.id == id_ for finding in findings.found):
         return None

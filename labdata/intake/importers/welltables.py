@@ -74,7 +74,7 @@ def well_facts(said: dict[str, tuple[str, str]], default_unit: str = "") -> dict
         number = values.read_text(said[code][0]).value if code in said else None
         if number is not None and abs(number) <= limit:
             facts[code.lower()] = number
-    lengths = {
+    lengths: dict[str, float | None] = {
         code: _length(*said[code], default_unit) for code in ("KB", "RT", "DF", "GL", "WATER", "TD") if code in said
     }
     for code, kind in DATUMS:
@@ -184,7 +184,8 @@ class _TableReader:
         said = {code: self._number(row, code) if code in NUMBERS else self._text(row, code) for code in self.columns}
         missing = [code for code in REQUIRED[kind] if said.get(code) in {None, ""}]
         if missing:
-            return self._incomplete(row, missing)
+            self._incomplete(row, missing)
+            return None
         made = getattr(self, f"_as_{kind}")(row, said)
         if made is None:
             return None
