@@ -12,6 +12,7 @@ from qc.review.record_pdf import record_pdf
 from qc.review.services import Choice, answer_flags, decide, reopen, sign_off
 from qc.review.standing import results_of
 from tests.factories import PASSWORD, UserFactory
+from tests.qc.review.test_arrival import bench, later_version  # noqa: F401 - a fixture
 from tests.qc.review.wells import flag, people, person, qc_run, small_set
 
 pytestmark = pytest.mark.django_db
@@ -133,3 +134,19 @@ def test_members_get_the_file_and_nobody_else(signed, client):
         client.get(reverse("review_record", args=[review_set.project.slug, other.pk, signature.pk])).status_code == 404
     )
     assert ReviewSet.objects.count() == 2
+
+
+def test_a_later_report_version_leaves_the_record_of_what_was_signed(bench):  # noqa: F811
+    first = bench.review_set.sign_offs.get()
+    before = signed_lines(first)
+    fresh = later_version(bench.report, bench.analyses, changes={"TMAX": 441}, drop=("S1",))
+    ended = record(first)
+    assert ended.whole and ended.lines == before and len(ended.lines) == 8
+    assert "changed, added or withdrew signed values" in ended.reopening.reason and ended.reopening.reopened_by is None
+    tmax = fresh[0].results.get(analyte__code="TMAX")
+    decide(user=bench.chemist, review_set=bench.review_set, choices=[Choice(tmax.pk, "accepted")])
+    again = record(sign(bench.review_set, person(bench.project, Role.APPROVER)))
+    assert again.whole
+    changed = {change.name.split(" ")[0]: (change.before, change.now) for change in again.changed}
+    assert changed == {"TMAX": ("436, accepted", "441, accepted"), "S1": ("0.40, accepted", "")}
+    assert [event.by for event in again.events][:2] == ["system", "system"]
