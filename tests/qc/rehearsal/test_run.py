@@ -25,7 +25,7 @@ def told():
     """All kinds, once each."""
     with pytest.MonkeyPatch.context() as patch:
         patch.setattr(rehearsal, "SPARSE_REPEATS", 1)
-        return rehearse(clean(per_unit=14), Terms(), seed=1)
+        return rehearse(clean(per_unit=20), Terms(), seed=1)
 
 
 def test_strong_and_moderate_faults_are_caught(told):
