@@ -50,6 +50,13 @@ def seen(table: Table, answers) -> dict[str, tuple[list[str], list[str]]]:
 
 
 PER_SET = {
+    "detection_limit",
+    "batch_qc_coverage",
+    "cochran_variance",
+    "element_oxide_mixup",
+    "method_pair_bias",
+    "isotope_scale_declared",
+    "oxygen_scale_slip",
     "core_log_shift",
     "core_recovery",
     "cuttings_core_bias",
