@@ -12,11 +12,11 @@ WINDOW = 10  # five above and five below, fewer where the unit is small
 def around(rows: pd.DataFrame, values: Floats, minimum: int, *, window: int = WINDOW) -> pd.DataFrame:
     """For each row ``median``, ``scale`` (MADN) and ``count`` of its nearest neighbours with a value, in depth.
 
-    Neighbours are of the same well, unit and sample kind. NaN where they are fewer than ``minimum``, and for a row
+    Neighbours are of the same well, unit and sample kind; where no unit is known there are none. NaN where they are fewer than ``minimum``, and for a row
     without a value.
     """
     made = pd.DataFrame({"median": np.nan, "scale": np.nan, "count": 0}, index=rows.index)
-    known = pd.DataFrame({"value": values, "top": rows["top_m"]}, index=rows.index).dropna()
+    known = pd.DataFrame({"value": values, "top": rows["top_m"]}, index=rows.index)[rows["unit"].ne("")].dropna()
     keys = ["well", "unit", "kind"]
     for _, members in rows.loc[known.index].sort_values([*keys, "top_m"], kind="stable").groupby(keys, sort=True):
         size = len(members)

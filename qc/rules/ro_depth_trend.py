@@ -31,7 +31,7 @@ def check(
         away = 10**trend.y - expected
         hit = (np.abs(trend.scores) > z_max) & (np.abs(away) > ro_away_min)
         outcome[list(trend.rows)] = np.where(hit, FIRE, PASS)
-        findings += [_finding(trend, at, float(expected[at]), (z_max, ro_away_min)) for at in np.flatnonzero(hit)]
+        findings += [_finding(trend, int(at), float(expected[at]), (z_max, ro_away_min)) for at in np.flatnonzero(hit)]
         lines.append(_line(trend, surface_min, surface_max))
     answer = merge([Answer(outcome, findings), *lines])
     return Answer(answer.outcome, answer.findings, {trend.well: trend for trend in made})

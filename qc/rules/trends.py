@@ -69,7 +69,7 @@ def of_wells(table: Table, rows: pd.DataFrame, values: Floats, *, samples_min: i
     return made
 
 
-def _trend(rows: pd.DataFrame, z: Floats, y: Floats, how: str, limits: tuple[int, float]) -> Trend:
+def _trend(rows: pd.DataFrame, z: Floats, y: Any, how: str, limits: tuple[int, float]) -> Trend:
     places = tuple(int(row) for row in rows.index)
     reason = ""
     if len(z) < limits[0]:
@@ -87,7 +87,10 @@ def below_ground(table: Table, well: Any, rows: pd.DataFrame) -> tuple[Floats, s
     own = table.survey[table.survey["well"] == well].sort_values("md_m")
     tvd, how = md, "no survey: hole taken as vertical"
     if len(own) > 1:
-        made = at_depth(*(own[name].to_numpy(dtype=float) for name in ("md_m", "inclination_deg", "azimuth_deg")), md)
+        md_m, inclination, azimuth = (
+            own[name].to_numpy(dtype=float) for name in ("md_m", "inclination_deg", "azimuth_deg")
+        )
+        made = at_depth(md_m, inclination, azimuth, md)
         tvd, how = np.where(rows["depth_kind"].eq("TVD"), md, made), "minimum curvature"
     fact = table.wells.loc[well]
     air = fact["datum_m"] + fact["water_m"] if fact["water_m"] > 0 else fact["datum_m"] - fact["ground_m"]

@@ -122,7 +122,14 @@ def test_table_of_materials():
 
 
 def barium(value, **more):
-    return {"method": "elements", "kind": "cuttings", "BA": value, "top_m": 2500.0, **more}
+    return {
+        "method": "elements",
+        "kind": "cuttings",
+        "BA": value,
+        "top_m": 2500.0,
+        "formation": "Ashgrove Shale",
+        **more,
+    }
 
 
 def test_barite():
