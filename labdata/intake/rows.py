@@ -12,6 +12,13 @@ from labdata.intake.titles import Facts
 from labdata.intake.units import FOOT_M
 from labdata.intake.workbook import cell_text
 
+_DEPTH_KINDS = {
+    "driller": "driller",
+    "logger": "logger",
+    "log depth": "logger",
+    "wireline": "logger",
+    "core depth": "core",
+}
 DEEPEST_M = 13_000.0  # the deepest borehole drilled is 12,262 m
 HEAD_FIELDS = ("LATITUDE", "LONGITUDE", "OPERATOR", "ELEVATION", "DATUM", "WELL_ALIAS")  # of the well, not the sample
 _REPEAT_LABEL = re.compile(
@@ -404,13 +411,4 @@ class RowReader:
 
 def _depth_kind(header: str) -> str:
     text = header.casefold()
-    for word, kind in (
-        ("driller", "driller"),
-        ("logger", "logger"),
-        ("log depth", "logger"),
-        ("wireline", "logger"),
-        ("core depth", "core"),
-    ):
-        if word in text:
-            return kind
-    return ""
+    return next((kind for word, kind in _DEPTH_KINDS.items() if word in text), "")

@@ -1,6 +1,5 @@
 """Finding the tables in a sheet: title block above, header of one to four rows, units row, data, notes below."""
 
-from collections.abc import Iterator
 from dataclasses import dataclass, field
 
 from labdata.intake import units
@@ -394,9 +393,3 @@ def _is_note(line: list[Cell]) -> bool:
     texts = [text for cell in line if (text := cell_text(cell))]
     lead = texts[0].casefold()
     return len(set(texts)) <= 2 and (len(texts[0]) > 40 or len(texts) == 1 or lead.startswith(_NOTE_WORDS))
-
-
-def iterate(table: Table) -> Iterator[tuple[int, list[Cell]]]:
-    """(row, cells) of the data rows."""
-    for row in table.rows:
-        yield row, table.sheet.rows[row]
