@@ -67,7 +67,8 @@ def _element(table: Table, rows: pd.DataFrame, name: str) -> Floats:
     if measured.empty:
         return np.full(len(rows), np.nan)
     by_sample = pd.Series(exact(measured, name), index=measured["sample"]).dropna()
-    return rows["sample"].map(by_sample[~by_sample.index.duplicated()]).to_numpy(dtype=float)
+    found = rows["sample"].map(by_sample[~by_sample.index.duplicated()])
+    return np.asarray(found, dtype=np.float64)
 
 
 def _signs(values: Mapping[str, Floats], near: Mapping[str, pd.DataFrame], limits: Mapping[str, float]) -> Signs:
@@ -111,7 +112,7 @@ def _recorded(table: Table, rows: pd.DataFrame, row: int) -> str | None:
     muds = table.muds[table.muds["well"] == num(rows, row, "well")]
     at = rows.loc[[row]]
     said = [
-        f"{mud.kind} {mud.additives or ''}"
+        f"{mud.kind!s} {mud.additives or ''!s}"
         for mud in muds.itertuples()
         if inside(at, mud.well, mud.top_m, mud.base_m).any()  # type: ignore[arg-type]
     ]

@@ -57,7 +57,7 @@ def total_gamma(table: Table, well: Any) -> tuple[Floats, Floats] | None:
     if not sizes or max(sizes) < 2:
         return None
     best = curves.iloc[int(np.argmax(sizes))]
-    depth, values = (np.asarray(best[name], dtype=float) for name in ("depths", "values"))
+    depth, values = (np.asarray(best[name], dtype=np.float64) for name in ("depths", "values"))
     order = np.argsort(depth, kind="stable")
     return depth[order], values[order]
 
@@ -65,10 +65,10 @@ def total_gamma(table: Table, well: Any) -> tuple[Floats, Floats] | None:
 def _fit(members: pd.DataFrame, log: tuple[Floats, Floats], length_min: float, how: dict[str, float]) -> Match | None:
     """The best shift of one run; None where the run is too short, or nothing can be correlated."""
     gamma = pd.Series(exact(members, "GR"), index=members["top_m"]).dropna().groupby(level=0).mean()
-    depth = gamma.index.to_numpy(dtype=float)
+    depth: Floats = np.asarray(gamma.index, dtype=np.float64)
     if len(depth) < READINGS_MIN or depth[-1] - depth[0] < length_min:
         return None
-    return core_to_log((depth, gamma.to_numpy(dtype=float)), log, **how)
+    return core_to_log((depth, np.asarray(gamma, dtype=np.float64)), log, **how)
 
 
 def _judged(

@@ -7,7 +7,7 @@ import numpy as np
 import pandas as pd
 
 from qc.rules.rule import CANNOT_EVALUATE, FIRE, INFO, NOT_APPLICABLE, PASS, WARN, Answer, Finding, Rule, say
-from qc.rules.spans import Floats
+from qc.rules.spans import Floats, line
 from qc.rules.table import Table
 
 OFFSETS_SHOWN = 50
@@ -19,7 +19,7 @@ def check(table: Table, *, tolerance: float, samples_min: int, share_min: float)
     outcomes: list[tuple[int, str]] = []
     findings: list[Finding] = []
     for well, own in samples.groupby("well", sort=True):
-        fact = table.wells.loc[well]
+        fact = line(table.wells, int(well))
         made = [_stated(own, fact), *_mixed(own, fact, tolerance, (samples_min, share_min))]
         outcomes += [(row, outcome) for row, outcome, _ in made]
         findings += [finding for _, _, finding in made if finding]

@@ -95,5 +95,5 @@ def core_to_log(
     short = resample(*core, core[0][0] + step * places, gap_max=3 * steps[0])
     far = np.arange(-around, len(places) + around)
     long = resample(*log, core[0][0] + step * far, gap_max=3 * steps[1])
-    lags = step * np.arange(-around, around + 1)
+    lags: Floats = np.asarray(step * np.arange(-around, around + 1), dtype=np.float64)
     return match(sliding(smooth(short, round(resolution / step)), long), lags, apart)

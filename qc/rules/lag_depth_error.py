@@ -66,7 +66,9 @@ def shift(
     )
     top = members["top_m"].to_numpy(dtype=float)
     base = np.where(members["base_m"].isna(), top + length, members["base_m"].to_numpy(dtype=float))
-    correlations = np.array([_r(values, interval_means(log, top - lag, base - lag)) for lag in lags])
+    correlations: Floats = np.array(
+        [_r(values, interval_means(log, top - lag, base - lag)) for lag in lags], dtype=np.float64
+    )
     return match(correlations, lags, apart=2 * length)
 
 

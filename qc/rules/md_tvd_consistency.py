@@ -89,8 +89,10 @@ def _pair(
         return row, FIRE, Finding(row, "", REJECT, text, (), tvd, md, more=more)
     if len(stations) < 2:
         return row, CANNOT_EVALUATE, None
-    columns = (stations[name].to_numpy(dtype=float) for name in ("md_m", "inclination_deg", "azimuth_deg"))
-    computed = float(at_depth(*columns, np.array([md]))[0])
+    md_m, inclination, azimuth = (
+        stations[name].to_numpy(dtype=float) for name in ("md_m", "inclination_deg", "azimuth_deg")
+    )
+    computed = float(at_depth(md_m, inclination, azimuth, np.array([md]))[0])
     if abs(tvd - computed) <= limit:
         return row, PASS, None
     text = (

@@ -28,7 +28,7 @@ def check(
         own = alone[members.index]
         means = members.index[~own]
         first = int(means[0] if len(means) else members.index[0])
-        readings = np.sort(ro[members.index[own]].dropna().to_numpy())
+        readings: Floats = np.sort(np.asarray(ro[members.index[own]].dropna(), dtype=np.float64))
         if len(readings) < readings_min:
             outcomes[first] = CANNOT_EVALUATE
             continue
