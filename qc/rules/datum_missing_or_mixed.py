@@ -18,8 +18,8 @@ def check(table: Table, *, tolerance: float, samples_min: int, share_min: float)
     samples = table.rows[table.rows["top_m"].notna() & table.rows["kind"].ne("outcrop")]
     outcomes: list[tuple[int, str]] = []
     findings: list[Finding] = []
-    for well, own in samples.groupby("well", sort=True):
-        fact = line(table.wells, int(well))
+    for _, own in samples.groupby("well", sort=True):
+        fact = line(table.wells, int(own["well"].iloc[0]))
         made = [_stated(own, fact), *_mixed(own, fact, tolerance, (samples_min, share_min))]
         outcomes += [(row, outcome) for row, outcome, _ in made]
         findings += [finding for _, _, finding in made if finding]

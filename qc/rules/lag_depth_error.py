@@ -69,7 +69,7 @@ def shift(
     correlations: Floats = np.array(
         [_r(values, interval_means(log, top - lag, base - lag)) for lag in lags], dtype=np.float64
     )
-    return match(correlations, lags, apart=2 * length)
+    return match(correlations, np.asarray(lags, dtype=np.float64), apart=2 * length)
 
 
 def interval_means(log: tuple[Floats, Floats], top: Floats, base: Floats) -> Floats:
