@@ -51,7 +51,7 @@ class Cells:
 def decimal_comma(table: Table, mapping: Mapping, findings: Findings) -> str:
     """What a comma before three digits is in this table; asked when such cells exist and no other cell tells."""
     texts = list(_doubtful(table, mapping))
-    role = comma_role(texts, table.sheet.comma_hint)
+    role = comma_role(texts)
     if role:
         return role
     for row, column in _three_digits(table, mapping):

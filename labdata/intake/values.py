@@ -208,11 +208,12 @@ def _plain_number(body: str, comma: str) -> str | None:
     return None
 
 
-def comma_role(texts: Iterable[str], hint: str = UNKNOWN) -> str:
+def comma_role(texts: Iterable[str]) -> str:
     """What a comma before three digits is in a table, from the cells that leave no doubt.
 
     "thousands" where points are decimal or commas group twice; "decimal" where commas stand before one, two or
-    more than three digits; ``hint`` (a semicolon-separated file hints at decimal commas) where no cell tells.
+    more than three digits; unknown where no cell tells, even in a file separated by semicolons: 9,870 ft may be
+    nine thousand feet there too.
     """
     points = commas = 0
     for text in texts:
@@ -223,7 +224,7 @@ def comma_role(texts: Iterable[str], hint: str = UNKNOWN) -> str:
                 commas += 1
     if points and commas:
         return UNKNOWN
-    return THOUSANDS if points else DECIMAL if commas else hint
+    return THOUSANDS if points else DECIMAL if commas else UNKNOWN
 
 
 _DEPTH_PART = r"([-+]?[\d.,' ]*?\d[\d.,]*?(?:'\d{3})*(?:\.\d*)?)\s*(ft\.?|feet|foot|fuss|pieds?|pies|mkb|mbkb|mrt|m|metres?|meters?|mtrs?|'|′)?(?:\s*(?:md|mdkb|mdrt))?"

@@ -103,6 +103,7 @@ QUESTIONS = {
     "TOC without unit": ("Sample,Depth (m),TOC\nA,10,0.0074\n", "unit:C", ["fraction", "wt%"]),
     "depth without unit": ("Sample,Depth,TOC (wt%)\nA,10,1\n", "unit:B", ["m", "ft"]),
     "thousands or decimals": ("Sample\tDepth (m)\tTOC (wt%)\nA\t1,620\t2\n", "comma:A1", ["thousands", "decimal"]),
+    "thousands or decimals between semicolons": ("Sample;Depth (ft);Ba (ppm)\nA;9,870;1,500\n", "comma:A1", ["thousands", "decimal"]),
     "elements without unit": ("Depth (m),Al,Fe,Mo\n10,1,2,3\n", "unit:elements", ["wt%", "ug/g"]),
     "PI above 1": ("Sample,Depth (m),PI\nA,10,12\n", "unit:C", ["fraction", "%"]),
 }  # fmt: skip
