@@ -12,6 +12,7 @@ import numpy as np
 import pandas as pd
 
 from labdata.intake.fields import catalogue
+from qc.rules.spans import num
 
 if TYPE_CHECKING:
     from qc.rules.table import Table
@@ -84,7 +85,7 @@ def cell(table: "Table", row: int, analyte: str) -> dict[str, Any] | None:
     """Value and place of an analyte of one row or, where another method holds it, of its sample: keys of ``SUFFIXES``."""
     method, sample, name = table.rows.at[row, "method"], table.rows.at[row, "sample"], f"{analyte}_id"
     for frame in (table.panels.get(str(method)), table.rows):
-        if frame is not None and name in frame and row in frame.index and frame.at[row, name] >= 0:
+        if frame is not None and name in frame and row in frame.index and num(frame, row, name) >= 0:
             return {suffix: frame.at[row, f"{analyte}{suffix}"] for suffix in SUFFIXES}
     for donors in _elsewhere(table, str(method), analyte):
         if sample in donors.index:

@@ -84,10 +84,10 @@ def table_of(
     known = known.astype(dict.fromkeys(WELL_COLUMNS[len(WELL_TEXTS) :], float))
     things = {"tops": (tops, TOPS), "cores": (cores, CORES), "muds": (muds, MUDS), "shoes": (shoes, SHOES),
               "survey": (survey, SURVEY), "curves": (curves, CURVES)}  # fmt: skip
-    around = {name: _things(*given) for name, given in things.items()}
+    around: dict[str, Any] = {name: _things(*given) for name, given in things.items()}
     panels = _panels(listed)
     named = {(number, _place(panels, code)): text for (number, code), text in (headers or {}).items()}
-    held = {"panels": panels, "controls": controls_of(list(controls)), "headers": named}
+    held: dict[str, Any] = {"panels": panels, "controls": controls_of(list(controls)), "headers": named}
     return Table(frame(columns, len(listed)), known, **around, **held)
 
 

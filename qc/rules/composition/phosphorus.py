@@ -1,6 +1,7 @@
 """Phosphorus needs calcium; sulfur needs iron."""
 
 import numpy as np
+import pandas as pd
 
 from qc.rules.asking import answer, column, dig, first, nothing, wt
 from qc.rules.composition.stoichiometry import (
@@ -99,11 +100,11 @@ def check_sulfur(
     return merge(answers)
 
 
-def _given(rows, row):
+def _given(rows: pd.DataFrame, row: int) -> tuple[str, ...]:
     return tuple(name for name in SULFUR if num(rows, row, f"{name}_id") >= 0)
 
 
-def _pyrite(rows, made) -> Answer:
+def _pyrite(rows: pd.DataFrame, made: pd.DataFrame) -> Answer:
     def tell(row: int) -> Finding:
         held, most = num(made, row, "pyrite"), num(made, row, "most")
         text = f"Pyrite by diffraction holds {say(held)} wt% sulfur, the rock {say(num(made, row, 's'))} wt% in all."
@@ -117,7 +118,7 @@ def _pyrite(rows, made) -> Answer:
     return answer(rows, tell, applies=reported(rows, "PYRITE"), known=known, fires=made["pyrite"] > made["most"])
 
 
-def _iron(rows, made, excess: float) -> Answer:
+def _iron(rows: pd.DataFrame, made: pd.DataFrame, excess: float) -> Answer:
     def tell(row: int) -> Finding:
         need, iron = num(made, row, "need"), num(made, row, "fe")
         text = f"The sulfur needs {say(need)} wt% iron as pyrite, the rock has {say(iron)}: organic sulfur, sulfate, or a unit slip."
@@ -153,7 +154,7 @@ def _iron(rows, made, excess: float) -> Answer:
     )
 
 
-def _ratio(rows, made, toc_min: float, low: float, high: float) -> Answer:
+def _ratio(rows: pd.DataFrame, made: pd.DataFrame, toc_min: float, low: float, high: float) -> Answer:
     def tell(row: int) -> Finding:
         ratio = num(made, row, "ratio")
         text = (

@@ -29,7 +29,8 @@ class Brackets:
         if near.empty:
             return
         held = self.table.rows[self.table.rows["table"].isin(near["table"])]
-        self._rows = {(int(key[0]), str(key[1])): group for key, group in held.groupby(["table", "method"])}  # type: ignore[index]
+        key: Any
+        self._rows = {(int(key[0]), str(key[1])): group for key, group in held.groupby(["table", "method"])}
         for _, group in near.groupby(["table", *CHART, "role"], sort=True):
             lines = group["line"].to_numpy()
             for place, line in zip(group.index, lines, strict=True):
@@ -54,9 +55,11 @@ class Brackets:
 
 def each(table: Table, judge: Any) -> Answer:
     """One check a control and well whose results it brackets; ``judge(place)`` gives (outcome, tell) with ``tell(rows)``."""
-    entries = []
+    entries: list[Any] = []
     for place, wells in Brackets(table):
-        outcome, tell = judge(place) if wells else ("", None)
+        if not wells:
+            continue
+        outcome, tell = judge(place)
         entries += [(rows[0], outcome, tell(rows) if outcome == FIRE else None) for rows in wells]
     return of_sets(entries)
 

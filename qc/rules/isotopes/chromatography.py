@@ -15,8 +15,8 @@ ALKANES = tuple(f"NC{number}" for number in range(21, 35))
 
 def bray_evans(c: dict[int, Floats]) -> Floats:
     """CPI over C24-C34: mean of odd C25-C33 over even C24-C32 and over even C26-C34. Bray & Evans 1961, from memory."""
-    odd = sum(c[n] for n in range(25, 34, 2))
-    return 0.5 * (odd / sum(c[n] for n in range(24, 33, 2)) + odd / sum(c[n] for n in range(26, 35, 2)))
+    odd, low, high = (np.sum([c[n] for n in range(*span)], axis=0) for span in ((25, 34, 2), (24, 33, 2), (26, 35, 2)))
+    return np.asarray(0.5 * (odd / low + odd / high))
 
 
 def marzi(c: dict[int, Floats]) -> Floats:

@@ -77,14 +77,15 @@ def check_scale(table: Table) -> Answer:
     rows = table.panel("isotopes", *names)
     if rows.empty:
         return nothing()
-    entries = []
+    entries: list[Any] = []
+    number: Any
     for number, group in rows.groupby("table", sort=True):
         said = " ".join({str(remark) for remark in group["remark"]})
         for name in names:
             held = group[group[f"{name}_id"] >= 0]
             if held.empty:
                 continue
-            header = table.headers.get((int(number), int(held[f"{name}_col"].iloc[0])), "")  # type: ignore[call-overload]
+            header = table.headers.get((int(number), int(held[f"{name}_col"].iloc[0])), "")
             first = int(held.index[0])
             named = bool(SCALES.search(header) or SCALES.search(said))
             entries.append((first, PASS, None) if named else (first, FIRE, _undeclared(held, name, header)))
@@ -195,8 +196,9 @@ def check_oxygen(table: Table, *, expected_low: float, expected_high: float, sam
     if rows.empty:
         return nothing()
     entries: list[Any] = []
+    number: Any
     for number, group in rows[~np.isnan(exact(rows, "D18O_CARB"))].groupby("table", sort=True):
-        header = table.headers.get((int(number), int(group["D18O_CARB_col"].iloc[0])), "")  # type: ignore[call-overload]
+        header = table.headers.get((int(number), int(group["D18O_CARB_col"].iloc[0])), "")
         first, members = int(group.index[0]), tuple(int(row) for row in group.index)
         if len(group) < samples_min or re.search(r"smow", header, re.I):
             entries.append((first, NOT_APPLICABLE, None))

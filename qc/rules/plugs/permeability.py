@@ -3,6 +3,7 @@
 from collections.abc import Callable
 
 import numpy as np
+import pandas as pd
 
 from qc.rules.asking import answer, column, dig, nothing
 from qc.rules.facts import says
@@ -110,7 +111,7 @@ def check_outlier(table: Table, *, z_max: float, samples_min: float, vertical_ma
     return merge([_trend(rows, z_max, samples_min), _vertical(rows, vertical_max)])
 
 
-def _trend(rows, z_max: float, samples_min: float) -> Answer:
+def _trend(rows: pd.DataFrame, z_max: float, samples_min: float) -> Answer:
     phi, air = exact(rows, "PHI"), exact(rows, "KAIR")
     with np.errstate(invalid="ignore", divide="ignore"):
         logk = np.where(air > 0, np.log10(air), np.nan)
@@ -143,7 +144,7 @@ def _trend(rows, z_max: float, samples_min: float) -> Answer:
     return answer(rows, tell, applies=applies, known=~np.isnan(z), fires=fires)
 
 
-def _vertical(rows, vertical_max: float) -> Answer:
+def _vertical(rows: pd.DataFrame, vertical_max: float) -> Answer:
     up, along = exact(rows, "KVERT"), exact(rows, "KAIR")
 
     def tell(row: int) -> Finding:

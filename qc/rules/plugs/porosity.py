@@ -20,7 +20,8 @@ def check_porosity(table: Table, *, tolerance: float, porosity_max: float) -> An
     if rows.empty:
         return nothing()
     phi, bulk, grain = (span(rows, name, rounded=True) for name in ("PHI", "RHOB", "RHOG"))
-    made_low, made_high = 100 * (1 - bulk.hi / grain.lo), 100 * (1 - bulk.lo / grain.hi)
+    with np.errstate(divide="ignore", invalid="ignore"):
+        made_low, made_high = 100 * (1 - bulk.hi / grain.lo), 100 * (1 - bulk.lo / grain.hi)
     value = rows["PHI"].to_numpy()
     wet = says(rows, r"\b(?:wet|saturated) (?:bulk )?density|stress(?:ed|-corrected)|overburden")
     with np.errstate(invalid="ignore"):
