@@ -29,7 +29,6 @@ class Brackets:
         if near.empty:
             return
         held = self.table.rows[self.table.rows["table"].isin(near["table"])]
-        key: Any
         self._rows = {(int(key[0]), str(key[1])): group for key, group in held.groupby(["table", "method"])}
         for _, group in near.groupby(["table", *CHART, "role"], sort=True):
             lines = group["line"].to_numpy()
