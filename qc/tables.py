@@ -85,6 +85,7 @@ def read(wells: Sequence[Well]) -> Table:
         rows=made,
         panels=_panels(place, rows),
         controls=controls(wells, rows),
+        headers=_headers(rows),
         wells=_wells(wells),
         tops=tops,
         cores=_along(
@@ -167,6 +168,18 @@ def _panels(place: dict[int, int], rows: pd.DataFrame) -> dict[str, pd.DataFrame
             columns |= _spread(own[own["code"] == analyte], analyte, len(rows))
         made[method] = pd.DataFrame(columns, index=rows.index).loc[index]
     return made
+
+
+def _headers(rows: pd.DataFrame) -> dict[tuple[int, int], str]:
+    """Header and unit of the columns of tables with isotopes or chromatography, by table and column."""
+    asked = rows[rows["method"].isin(["isotopes", "gc"])]
+    if asked.empty:
+        return {}
+    places = dict(zip(asked["table_id"], asked["table"], strict=True))
+    held = SourceColumn.objects.filter(table__in=sorted(places)).values_list(
+        "table_id", "line", "header", "unit_reported"
+    )
+    return {(int(places[table]), line): f"{header} {unit}".strip() for table, line, header, unit in held}
 
 
 def _results(

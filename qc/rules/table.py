@@ -41,6 +41,11 @@ WELL_COLUMNS = ("name", "uwi", "datum_kind", "td_m", "datum_m", "ground_m", "wat
 WELL_TEXTS = WELL_COLUMNS[:3]
 
 
+SHOES = ("well", "md_m")
+SURVEY = ("well", "md_m", "inclination_deg", "azimuth_deg")
+CURVES = ("well", "name", "quantity", "depths", "values")
+
+
 @dataclass(frozen=True)
 class Table:
     """Analyses of one or more wells, and what is known along the wells.
@@ -105,9 +110,6 @@ _TEXTS = frozenset({"name", "version", "kind", "additives", "quantity", "depths"
 TOPS = ("well", "name", "top_m", "version")
 CORES = ("well", "number", "top_m", "base_m", "shift_m", "recovered_m")
 MUDS = ("well", "top_m", "base_m", "kind", "additives")
-SHOES = ("well", "md_m")
-SURVEY = ("well", "md_m", "inclination_deg", "azimuth_deg")
-CURVES = ("well", "name", "quantity", "depths", "values")
 CONTROLS = (
     "project", "table", "line", "laboratory", "method", "analyte", "role", "material", "lot", "report", "date", "value",
     "q", "certified", "uncertainty", "result", "text", "column", "file", "sheet", "across",

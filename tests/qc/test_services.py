@@ -90,7 +90,8 @@ def test_wells_are_checked_apart_when_asked():
     project = store(REPORT)
     well = project.wells.get(name="Brill 7")
     made = run(project, [well])
-    assert [flag.rule for flag in made.flags.all()] == ["depth_interval_order"]
+    assert {flag.rule for flag in made.flags.all()} == {"datum_missing_or_mixed", "depth_interval_order"}
+    assert {flag.well for flag in made.flags.all()} == {well}
     assert made.analyses_checked == 1
     with pytest.raises(InvalidInput, match="No wells"):
         start_run(ProjectFactory(), [well], None)

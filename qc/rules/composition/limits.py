@@ -27,7 +27,9 @@ def _limited(table: Table) -> Iterator[tuple[pd.DataFrame, str]]:
             yield table.rows, code
     for method in ("elements", "minerals"):
         held = table.panels.get(method)
-        for code in codes_of(method) if held is not None else ():
+        if held is None:
+            continue
+        for code in codes_of(method):
             if f"{code}_q" in held and (held[f"{code}_q"] == "<").any():
                 yield table.panel(method, code), code
 

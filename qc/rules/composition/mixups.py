@@ -46,7 +46,7 @@ def _oxide(rows: pd.DataFrame, members: list[int], element: str, ratio: Floats, 
     if len(members) < pairs_min:
         return members[0], NOT_APPLICABLE, None
     with np.errstate(divide="ignore"):
-        decades = float(np.log10(np.median(ratio[rows.index.get_indexer(members)])))
+        decades = float(np.log10(np.median(ratio[rows.index.get_indexer(pd.Index(members))])))
     step = float(np.log10(factor))
     as_metal, as_oxide = abs(decades) <= tolerance, abs(decades - 2 * step) <= tolerance
     if not (as_metal or as_oxide):
@@ -137,7 +137,8 @@ def _column(
     ceiling: float,
 ) -> list[Entry]:
     tolerance, neighbours_min, spread_max = width
-    logs, made = np.log10(numbers), []
+    logs = np.log10(numbers)
+    made: list[Entry] = []
     enough = len(members) > neighbours_min
     order = np.sort(logs)
     for row, value, log in zip(members, numbers, logs, strict=True):

@@ -48,7 +48,7 @@ def _pair(left: pd.DataFrame, right: pd.DataFrame, code: str, *, slopes: tuple[f
     if len(shared) < pairs_min:
         return [(rows[0], NOT_APPLICABLE, None)]
     low, high = slopes
-    slope = theil_sen(x[shared].to_numpy(), y[shared].to_numpy()).slope
+    slope = theil_sen(np.asarray(x[shared], dtype=np.float64), np.asarray(y[shared], dtype=np.float64)).slope
     if np.isnan(slope) or low <= slope <= high:
         return [(rows[0], NOT_APPLICABLE if np.isnan(slope) else PASS, None)]
     text = f"{code} of the second table is {say(slope)} times that of the first over {len(shared)} shared samples."

@@ -1,5 +1,7 @@
 """Oxides and minerals add up to the whole rock."""
 
+from typing import Any
+
 import numpy as np
 import pandas as pd
 
@@ -48,7 +50,7 @@ def check_oxides(
         known = (whole.lo >= low) & (whole.hi - sulfate <= warn_high)
 
     def tell(row: int) -> Finding:
-        at = rows.index.get_loc(row)
+        at: Any = rows.index.get_loc(row)
         sum_, without = dig(whole.lo[at], 2), bool(burnt[at])
         far = sum_ > reject_high or (not without and sum_ < reject_low)
         text = f"Major oxides {'without' if without else 'and'} loss on ignition add up to {say(sum_)} wt%."
@@ -117,7 +119,7 @@ def check_minerals(table: Table, *, tolerance: float, minerals_min: float, toc_h
 
 
 def _sum(rows: pd.DataFrame, names: tuple[str, ...], row: int, whole: Span, slack: Floats) -> Finding:
-    at = rows.index.get_loc(row)
+    at: Any = rows.index.get_loc(row)
     made, limit = dig(whole.hi[at], 2), dig(slack[at], 3)
     parts = {name: num(rows, row, name) for name in names if num(rows, row, f"{name}_id") >= 0}
     text = f"The minerals add up to {say(made)} wt%; a refined total is made 100, rounding explains {say(limit)}."

@@ -1,5 +1,7 @@
 """Enrichment of redox-sensitive metals, and what a grinding tool leaves behind."""
 
+from typing import Any
+
 import numpy as np
 
 from qc.rules.asking import answer, column, dig, first, nothing, wt
@@ -47,7 +49,7 @@ def check(
     made = column(rows, al=aluminium, carbide=carbide, alone=alone, steel=steel, hot=hot)
 
     def tell(row: int) -> Finding:
-        at = rows.index.get_loc(row)
+        at: Any = rows.index.get_loc(row)
         reasons = {
             "carbide": f"W {say(value['W'][at])} and Co {say(value['CO'][at])} ug/g point to a tungsten carbide mill",
             "alone": f"Mo is enriched {say(ef['MO'][at])} times while U and V are as in the crust (Mo from a grinding tool?)",

@@ -1,5 +1,7 @@
 """Whether a batch carries the controls that it needs."""
 
+from typing import Any
+
 import numpy as np
 import pandas as pd
 
@@ -34,7 +36,7 @@ def check(table: Table, *, every: float, unknowns_min: float) -> Answer:
     lines = controls.drop_duplicates(["table", "method", "line"])
     counted = lines.groupby(["table", "method", "role"]).size().to_dict()
     failing = _failing(table, controls)
-    entries = []
+    entries: list[Any] = []
     for (number, method), group in rows.groupby(["table", "method"], sort=True):  # type: ignore[misc]
         unknown = group[(group["role"] == "sample") & (group["replicate"] == 1)]
         if len(unknown) < unknowns_min:
@@ -57,13 +59,10 @@ def _failing(table: Table, controls: pd.DataFrame) -> set[tuple[int, str]]:
     answer = table.answers.get("crm_recovery")
     if answer is None:
         return set()
-    failed = {
-        (int(table.rows.at[one.rows[0], "table"]), str(table.rows.at[one.rows[0], "method"])) for one in answer.findings
-    }  # type: ignore[arg-type]
-    passed = {
-        (int(table.rows.at[row, "table"]), str(table.rows.at[row, "method"]))
-        for row in answer.outcome.index[answer.outcome == PASS]
-    }  # type: ignore[arg-type]
+    places: Any = list(zip(table.rows["table"].astype(int), table.rows["method"].astype(str), strict=True))
+    where = dict(zip(table.rows.index.tolist(), places, strict=True))
+    failed = {where[one.rows[0]] for one in answer.findings}
+    passed = {where[row] for row in answer.outcome.index[answer.outcome == PASS].tolist()}
     return failed - passed
 
 

@@ -29,7 +29,8 @@ class Brackets:
         if near.empty:
             return
         held = self.table.rows[self.table.rows["table"].isin(near["table"])]
-        self._rows = {(int(key[0]), str(key[1])): group for key, group in held.groupby(["table", "method"])}
+        groups: Any = held.groupby(["table", "method"])
+        self._rows = {(int(number), str(method)): group for (number, method), group in groups}
         for _, group in near.groupby(["table", *CHART, "role"], sort=True):
             lines = group["line"].to_numpy()
             for place, line in zip(group.index, lines, strict=True):
@@ -64,7 +65,7 @@ def each(table: Table, judge: Any) -> Answer:
 
 
 def finding(
-    control: pd.Series, rows: tuple[int, ...], severity: str, text: str, *, computed: Any, limit: Any, **more: Any
+    control: Any, rows: tuple[int, ...], severity: str, text: str, *, computed: Any, limit: Any, **more: Any
 ) -> Finding:
     """A finding about results that a control brackets, the control's own cell with it."""
     analyte = str(control["analyte"])

@@ -160,7 +160,7 @@ def _replicates(table: Table, least: int, outlier: Callable[[Floats, str], dict[
     return each(table, judge)
 
 
-def _replicate(control: pd.Series, severity: str, text: str, computed: Any, limit: Any, rows: tuple[int, ...]) -> Any:  # noqa: PLR0917
+def _replicate(control: Any, severity: str, text: str, computed: Any, limit: Any, rows: tuple[int, ...]) -> Any:  # noqa: PLR0917
     return finding(
         control, rows, severity, text, computed=computed, limit=limit, alternatives=["one bad run", "wrong material"]
     )
@@ -215,7 +215,7 @@ def check_consensus(table: Table, *, questionable: float, action: float, laborat
     for group in _laboratories(table, int(laboratories_min)):
         means = group.groupby("laboratory")["value"].mean()
         made = algorithm_a(means.to_numpy(dtype=float))
-        for place, laboratory in group["laboratory"].items():
+        for place, laboratory in zip(group.index.tolist(), group["laboratory"], strict=True):
             verdict[int(place)] = (float(means[laboratory]), made)
 
     def judge(place: int) -> tuple[str, Any]:
@@ -266,7 +266,7 @@ def check_horwitz(table: Table, *, ratio_low: float, ratio_high: float, laborato
     return each(table, judge)
 
 
-def _rule(id_: str, title: str, tests: str, check: Any, **words: str) -> Rule:
+def _rule(id_: str, title: str, tests: str, check: Any, **words: Any) -> Rule:
     return Rule(
         id=id_,
         family="lab_control",

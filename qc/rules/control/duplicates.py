@@ -73,7 +73,7 @@ def check(table: Table, *, near_limit: float, near_limit_allowed: float, s2_min:
     return of_sets(entries)
 
 
-def _pair(rows, analyte: str, members: tuple[int, int], kind: tuple[str, float], numbers, limits) -> Any:  # noqa: PLR0917
+def _pair(rows: Any, analyte: str, members: tuple[int, int], kind: tuple[str, float], numbers: Any, limits: Any) -> Any:  # noqa: PLR0917
     one, other = members
     first, second = num(rows, one, analyte), num(rows, other, analyte)
     if any(rows.at[row, f"{analyte}_q"] for row in members) or np.isnan(first + second):

@@ -41,7 +41,8 @@ def check_recovery(table: Table, *, tmax_away: float, **limits: float) -> Answer
     fails = [_fails(controls.loc[place], tmax_away, limits) for place in controls.index]
 
     def judge(place: int) -> tuple[str, Any]:
-        control, failed = controls.loc[place], fails[place]
+        control: Any = controls.loc[place]
+        failed = fails[place]
         if control["role"] != "reference" or control["method"] == "isotopes":
             return NOT_APPLICABLE, None
         if failed is None:
@@ -108,7 +109,7 @@ def check_blank(table: Table, *, share_of_lowest: float, corrected_times: float)
     controls = table.controls
 
     def judge(place: int) -> tuple[str, Any]:
-        control = controls.loc[place]
+        control: Any = controls.loc[place]
         analyte, method = str(control["analyte"]), str(control["method"])
         if control["role"] != "blank" or not (analyte in AMOUNTS or method == "elements"):
             return NOT_APPLICABLE, None
@@ -160,7 +161,7 @@ def check_isotopes(table: Table, *, warn_away: float, reject_away: float) -> Ans
     controls = table.controls
 
     def judge(place: int) -> tuple[str, Any]:
-        control = controls.loc[place]
+        control: Any = controls.loc[place]
         if not str(control["analyte"]).startswith("D13C") or control["role"] != "reference":
             return NOT_APPLICABLE, None
         target = CARBON_SCALE.get(material(str(control["material"])), float(control["certified"]))
