@@ -189,7 +189,7 @@ class ReasonCode(Choices):
     SUPPRESSION = "suppression", "suppressed or matrix effect"
     DEPTH = "depth", "wrong depth or wrong sample"
     MEASUREMENT = "measurement", "measurement fault"
-    TRANSCRIPTION = "transcription", "slip in the report"
+    MISKEYED = "miskeyed", "slip in the report"
     LOW_SIGNAL = "low_signal", "signal too small"
     REPEAT_ASKED = "repeat_asked", "repeat asked from the laboratory"
     GEOLOGY = "geology", "explained by the geology"

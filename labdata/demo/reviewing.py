@@ -18,12 +18,12 @@ FOLLOWED = {
     "free_oil_crossover": ReasonCode.CONTAMINATION,
     "pi_high_for_maturity": ReasonCode.CONTAMINATION,
     "oil_based_fluid_interval": ReasonCode.CONTAMINATION,
-    "index_recalc": ReasonCode.TRANSCRIPTION,
+    "index_recalc": ReasonCode.MISKEYED,
     "s2_floor_for_tmax": ReasonCode.LOW_SIGNAL,
     "tmax_range": ReasonCode.CONTAMINATION,
 }
 BY_FAMILY = {
-    "arithmetic": ReasonCode.TRANSCRIPTION,
+    "arithmetic": ReasonCode.MISKEYED,
     "depth": ReasonCode.DEPTH,
     "contamination": ReasonCode.CONTAMINATION,
     "suppression": ReasonCode.SUPPRESSION,

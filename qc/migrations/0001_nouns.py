@@ -96,7 +96,7 @@ class Migration(migrations.Migration):
             fields=[
                 ('id', models.BigAutoField(auto_created=True, primary_key=True, serialize=False, verbose_name='ID')),
                 ('verdict', models.CharField(choices=[('accepted', 'accepted'), ('rejected', 'rejected'), ('held', 'held'), ('undecided', 'undecided')], max_length=10)),
-                ('reason', models.CharField(blank=True, choices=[('', 'no reason needed'), ('contamination', 'contaminated'), ('suppression', 'suppressed or matrix effect'), ('depth', 'wrong depth or wrong sample'), ('measurement', 'measurement fault'), ('transcription', 'slip in the report'), ('low_signal', 'signal too small'), ('repeat_asked', 'repeat asked from the laboratory'), ('geology', 'explained by the geology'), ('other', 'other (say which)')], max_length=20)),
+                ('reason', models.CharField(blank=True, choices=[('', 'no reason needed'), ('contamination', 'contaminated'), ('suppression', 'suppressed or matrix effect'), ('depth', 'wrong depth or wrong sample'), ('measurement', 'measurement fault'), ('miskeyed', 'slip in the report'), ('low_signal', 'signal too small'), ('repeat_asked', 'repeat asked from the laboratory'), ('geology', 'explained by the geology'), ('other', 'other (say which)')], max_length=20)),
                 ('text', models.TextField(blank=True)),
                 ('decided_at', models.DateTimeField(default=django.utils.timezone.now)),
                 ('batch', models.UUIDField(default=uuid.uuid4)),
@@ -212,7 +212,7 @@ class Migration(migrations.Migration):
         ),
         migrations.AddConstraint(
             model_name='decision',
-            constraint=models.CheckConstraint(condition=models.Q(('reason__in', ['', 'contamination', 'suppression', 'depth', 'measurement', 'transcription', 'low_signal', 'repeat_asked', 'geology', 'other'])), name='decision_reason_known'),
+            constraint=models.CheckConstraint(condition=models.Q(('reason__in', ['', 'contamination', 'suppression', 'depth', 'measurement', 'miskeyed', 'low_signal', 'repeat_asked', 'geology', 'other'])), name='decision_reason_known'),
         ),
         migrations.AddConstraint(
             model_name='decision',
