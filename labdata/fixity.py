@@ -120,5 +120,5 @@ def _digest(rows: Iterable[tuple[Any, ...]]) -> str:
 
 
 def _plain(value: Any) -> Any:
-    """A value as both databases give it back: times in UTC to the microsecond, whole numbers of floats as floats."""
+    """A value as both databases give it back: times as text, in UTC to the microsecond."""
     return value.astimezone(UTC).isoformat(timespec="microseconds") if isinstance(value, datetime) else value

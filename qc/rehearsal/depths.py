@@ -21,10 +21,6 @@ def located(table: Table, free: pd.Index) -> pd.DataFrame:
     return rows[rows["top_m"].notna() & rows["kind"].ne("outcrop")]
 
 
-def any_depth(table: Table, free: pd.Index) -> list[Rows]:
-    return each(located(table, free).index)
-
-
 def numbered(table: Table, free: pd.Index) -> list[Rows]:
     """Samples whose label ends in a number and that have neighbours above and below of the same well and kind."""
     rows = located(table, free)

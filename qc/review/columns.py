@@ -4,7 +4,6 @@ from collections import defaultdict
 from dataclasses import dataclass, field
 from typing import Any
 
-from labdata.models import Result
 from qc.models import ReviewSet, Severity, Verdict
 from qc.review import figures
 from qc.review.standing import Standing, results_of
@@ -146,9 +145,3 @@ def _usable(column: dict[str, Any], at: int) -> bool:
         and str(at) not in column["qualifier"]
         and VERDICTS[column["verdict"][at]] != Verdict.REJECTED
     )
-
-
-def result_names(ids: list[int]) -> dict[int, str]:
-    """Results in words: "TMAX of Q-12 2510.00 m"."""
-    found = Result.objects.filter(pk__in=ids).select_related("analyte", "analysis__sample")
-    return {result.pk: f"{result.analyte} of {result.analysis.sample}" for result in found}
