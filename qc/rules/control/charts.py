@@ -9,7 +9,7 @@ import numpy as np
 import pandas as pd
 
 from qc.rules.control.brackets import CHART, each, finding
-from qc.rules.control.outliers import algorithm_a, grubbs, grubbs_critical, thompson
+from qc.rules.control.outliers import algorithm_a, grubbs, grubbs_critical, horrat
 from qc.rules.control.series import WARNING, cusum, ewma, multirule
 from qc.rules.panels import unit_of
 from qc.rules.robust import modified_z
@@ -246,7 +246,7 @@ def check_horwitz(table: Table, *, ratio_low: float, ratio_high: float, laborato
         means = group.groupby("laboratory")["value"].mean().to_numpy(dtype=float)
         per = {"wt%": 100.0, "mg/g": 1e3, "ug/g": 1e6}.get(unit_of(str(group["analyte"].iloc[0])))
         if per and means.mean() > 0:
-            made = 100 * means.std(ddof=1) / means.mean() / thompson(means.mean() / per)
+            made = horrat(100 * means.std(ddof=1) / means.mean(), means.mean() / per)
             verdict.update(dict.fromkeys((int(place) for place in group.index), float(made)))
 
     def judge(place: int) -> tuple[str, Any]:

@@ -1,13 +1,17 @@
 """Gas: order of carbon isotopes, sums; fractions of extracts: sums and the line between waxy and marine."""
 
+from typing import TypeVar
+
 import numpy as np
 import pandas as pd
 
 from qc.rules.asking import answer, column, count, dig, nothing
 from qc.rules.facts import says
 from qc.rules.rule import INFO, WARN, Answer, Finding, Rule, merge, say
-from qc.rules.spans import exact, num, reported
+from qc.rules.spans import Floats, exact, num, reported
 from qc.rules.table import Table
+
+Number = TypeVar("Number", float, Floats)
 
 ORDER = ("D13C_C1", "D13C_C2", "D13C_C3", "D13C_NC4")
 GASES = (
@@ -31,7 +35,7 @@ def bernard(methane: float, ethane: float, propane: float) -> float:
     return methane / (ethane + propane)
 
 
-def canonical_variable(saturated: float, aromatic: float) -> float:
+def canonical_variable(saturated: Number, aromatic: Number) -> Number:
     """CV = -2.53 d13C(sat) + 2.22 d13C(aro) - 11.65; above 0.47 waxy, else marine (Sofer 1984, from memory)."""
     return -2.53 * saturated + 2.22 * aromatic - 11.65
 
@@ -91,7 +95,7 @@ def check_sofer(table: Table, *, waxy_above: float) -> Answer:
     rows = table.panel("isotopes", "D13C_SAT", "D13C_ARO")
     if rows.empty:
         return nothing()
-    made = column(rows, cv=-2.53 * exact(rows, "D13C_SAT") + 2.22 * exact(rows, "D13C_ARO") - 11.65)
+    made = column(rows, cv=canonical_variable(exact(rows, "D13C_SAT"), exact(rows, "D13C_ARO")))
 
     def tell(row: int) -> Finding:
         cv = num(made, row, "cv")

@@ -1,11 +1,15 @@
 """Grain density of the stated rock, and of its minerals."""
 
+from typing import TypeVar
+
 import numpy as np
 
 from qc.rules.asking import answer, column, dig, nothing
 from qc.rules.rule import REJECT, WARN, Answer, Finding, Rule, say
-from qc.rules.spans import exact, num, reported, span
+from qc.rules.spans import Floats, exact, num, reported, span
 from qc.rules.table import Table
+
+Number = TypeVar("Number", float, Floats)
 
 LITHOLOGY = {
     "sandstone": r"\b(?:sandstone|sst)\b", "limestone": r"\b(?:limestone|lst)\b", "dolostone": r"\b(?:dolostone|dolomite rock|dst)\b",
@@ -76,8 +80,13 @@ WINDOW = Rule(
 def density_of(minerals: dict[str, float], kerogen: float = 0.0, kerogen_density: float = 1.25) -> float:
     """Grain density [g/cm3] of minerals [wt%, scaled to what kerogen leaves] and kerogen [wt%]."""
     whole = sum(minerals.values())
-    volume = sum(share / DENSITY[name] for name, share in minerals.items()) * (100 - kerogen) / whole
-    return 100 / (volume + kerogen / kerogen_density)
+    dry = sum(share / DENSITY[name] for name, share in minerals.items()) / whole
+    return _mixed(dry, kerogen, kerogen_density)
+
+
+def _mixed(dry: Number, kerogen: Number, kerogen_density: float) -> Number:
+    """Grain density of minerals of specific volume ``dry`` [cm3/g] with kerogen [wt%]: 1/rho = sum of w/rho."""
+    return 100 / (dry * (100 - kerogen) + kerogen / kerogen_density)
 
 
 def check_minerals(table: Table, *, tolerance: float, kerogen_density: float, share_min: float) -> Answer:
@@ -90,7 +99,7 @@ def check_minerals(table: Table, *, tolerance: float, kerogen_density: float, sh
     whole = shares.sum(axis=1)
     with np.errstate(invalid="ignore", divide="ignore"):
         dry = shares @ (1 / np.array(list(DENSITY.values()))) / whole
-        predicted = 100 / (dry * (100 - kerogen) + kerogen / kerogen_density)
+        predicted = _mixed(dry, kerogen, kerogen_density)
         away = exact(rows, "RHOG") - predicted
         fires = np.abs(away) > tolerance
     made = column(rows, predicted=predicted, without=1 / np.where(whole > 0, dry, np.nan), away=away)
